@@ -1,0 +1,60 @@
+namespace Halfvoice.Coordination;
+
+/// <summary>What the coordinator knows of a site's presence.</summary>
+internal sealed class SiteSeat
+{
+    private readonly CoordinatorSite _site;
+    private double _step;
+    private long _boundSteps;
+
+    public SiteSeat(CoordinatorSite site) => _site = site;
+
+    public bool Joined { get; private set; }
+
+    /// <summary>The last round that the site says it may have answered.</summary>
+    public RoundId AnsweredThrough { get; private set; }
+
+    /// <summary>Whether the current round needs this site.</summary>
+    public bool InRound { get; set; }
+
+    /// <summary>Whether an answer is still outstanding in the current round.</summary>
+    public bool Awaited { get; set; }
+
+    /// <summary>Whether the site answered in the current round.</summary>
+    public bool Fresh { get; set; }
+
+    /// <summary>Rounds in a row for which an old answer has stood in.</summary>
+    public int Age { get; set; }
+
+    public void Join(Enrol enrol)
+    {
+        Joined = true;
+        AnsweredThrough = enrol.AnsweredThrough;
+        _step = Math.ScaleB(1, enrol.LatticeExponent);
+        var bound = _site.Components.Count == 0 ? 0 : _site.Components.Max(part => part.Bound);
+
+        // Noise goes past the bound on values; a public margin of a hundred scales is passed once in 10^43 answers.
+        var steps = Math.Ceiling((bound + (100 * enrol.NoiseScale)) / _step);
+        _boundSteps = steps < long.MaxValue ? (long)steps : long.MaxValue;
+    }
+
+    public void Leave()
+    {
+        Joined = false;
+        Fresh = false;
+    }
+
+    /// <summary>Turns steps into values; false where a number lies outside the public bounds.</summary>
+    public bool TryRead(Answer answer, out double[] values)
+    {
+        values = new double[answer.Steps.Length];
+        for (var i = 0; i < values.Length; i++)
+        {
+            if (Math.Abs((Int128)answer.Steps[i]) > _boundSteps)
+                return false;
+            values[i] = answer.Steps[i] * _step;
+        }
+
+        return true;
+    }
+}

@@ -1,0 +1,23 @@
+namespace Halfvoice.Wire;
+
+/// <summary>Numbers that both ends of a stream agree on.</summary>
+public static class WireContract
+{
+    /// <summary>Version of the protocol; another one is refused.</summary>
+    public const uint Protocol = 1;
+
+    /// <summary>Largest message either end accepts, bytes: an ask about 5,000 buses is 80 kB.</summary>
+    public const int MaxMessageBytes = 1 << 20;
+
+    /// <summary>Largest number of components in an ask or answer.</summary>
+    public const int MaxComponents = 50_000;
+
+    /// <summary>Longest text that a peer may send, characters.</summary>
+    public const int MaxText = 500;
+
+    /// <summary>Seconds between pulses on a quiet stream.</summary>
+    public const int PulseSeconds = 10;
+
+    /// <summary>A stream that brings nothing for this long is dead, s.</summary>
+    public const int DeadAfterSeconds = 45;
+}
