@@ -13,7 +13,7 @@ public sealed class SetupBuilder
     public const double UnservedPriceFactor = 10;
 
     /// <summary>Public bound on an angle copy, rad: far beyond any real angle, close enough for a fine lattice.</summary>
-    public const double AngleBoundRad = 256;
+    public const double AngleBoundRad = 32;
 
     /// <summary>Default over-relaxation of scheme injection.</summary>
     public const double InjectionRelaxation = 1.2;

@@ -1,0 +1,101 @@
+using Grpc.Core;
+using Halfvoice.Coordination;
+using Halfvoice.Wire;
+using V1 = Halfvoice.Wire.V1;
+
+namespace Halfvoice.Coordinator;
+
+/// <summary>The gRPC face: proves who calls, checks what comes in, and hands it to the host's queue.</summary>
+internal sealed class DispatchService : V1.Dispatch.DispatchBase
+{
+    private readonly DispatchHost _host;
+    private readonly CallerIdentity _identity;
+
+    public DispatchService(DispatchHost host, CallerIdentity identity)
+    {
+        _host = host;
+        _identity = identity;
+    }
+
+    public override async Task Join(
+        IAsyncStreamReader<V1.FromSite> requestStream, IServerStreamWriter<V1.FromCoordinator> responseStream, ServerCallContext context)
+    {
+        var site = _identity.SiteOf(context);
+        var index = _host.IndexOf(site)
+            ?? throw new RpcException(new Status(StatusCode.PermissionDenied, "The plan has no site of the certificate's name."));
+        var stream = new SiteStream(index, site);
+        var write = WriteAllAsync(stream, responseStream, context.CancellationToken);
+        var read = ReadAllAsync(stream, requestStream, context.CancellationToken);
+        try
+        {
+            // Whichever ends first ends the stream: the site hung up, or we have nothing more to say to it.
+            var first = await Task.WhenAny(write, read).ConfigureAwait(false);
+            if (first == read)
+            {
+                stream.Complete();
+                await write.ConfigureAwait(false);
+            }
+
+            await first.ConfigureAwait(false);
+        }
+        catch (Exception failure) when (failure is OperationCanceledException or IOException or InvalidOperationException)
+        {
+            // The connection is gone; that the site left is all there is to say, and it is said below.
+        }
+        finally
+        {
+            await _host.Events.Writer.WriteAsync(new HostEvent.Leaving(stream)).AsTask()
+                .ContinueWith(_ => { }, TaskScheduler.Default).ConfigureAwait(false);
+        }
+    }
+
+    private static async Task WriteAllAsync(SiteStream stream, IServerStreamWriter<V1.FromCoordinator> writer, CancellationToken cancel)
+    {
+        await foreach (var message in stream.Outgoing.ReadAllAsync(cancel).ConfigureAwait(false))
+            await writer.WriteAsync(message, cancel).ConfigureAwait(false);
+    }
+
+    private async Task ReadAllAsync(SiteStream stream, IAsyncStreamReader<V1.FromSite> reader, CancellationToken cancel)
+    {
+        var enrolled = false;
+        while (await reader.MoveNext(cancel).ConfigureAwait(false))
+        {
+            stream.CountUp(reader.Current);
+            var (message, fault) = stream.Wire.Read(reader.Current);
+            if (message is FromSiteMessage.Farewell)
+                return;
+            var next = fault is not null
+                ? new HostEvent.Faulty(stream, fault.At(RoundId.None))
+                : Translate(stream, message!, ref enrolled);
+            if (next is not null)
+                await _host.Events.Writer.WriteAsync(next, cancel).ConfigureAwait(false);
+            if (next is HostEvent.Faulty)
+                return;
+        }
+    }
+
+    private static HostEvent? Translate(SiteStream stream, FromSiteMessage message, ref bool enrolled)
+    {
+        switch (message)
+        {
+            case FromSiteMessage.Enrolled enrol when !enrolled:
+                enrolled = true;
+                return enrol.Site == stream.Name
+                    ? new HostEvent.Joining(stream, enrol.Enrol)
+                    : Fault(stream, RefusalReason.WrongIdentity, "The enrolment names another site than the certificate.");
+            case FromSiteMessage.Enrolled:
+                return Fault(stream, RefusalReason.OutOfOrder, "A site enrols once a stream.");
+            case FromSiteMessage.Pulse:
+                return null;
+            case FromSiteMessage.Answered answered when enrolled:
+                return new HostEvent.Answered(stream, answered.Answer);
+            case FromSiteMessage.Refused refused when enrolled:
+                return new HostEvent.Refused(stream, refused.Refusal);
+            default:
+                return Fault(stream, RefusalReason.OutOfOrder, "A site enrols before it says anything else.");
+        }
+    }
+
+    private static HostEvent.Faulty Fault(SiteStream stream, RefusalReason reason, string text) =>
+        new(stream, new Refusal(RoundId.None, reason, text));
+}
