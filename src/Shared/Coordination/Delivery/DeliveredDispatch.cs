@@ -16,6 +16,8 @@ public static class DeliveredDispatch
     // A flow this far over its limit (MW) still counts as at the limit: interior-point and rounding error.
     private const double LineToleranceMw = 1e-4;
 
+    private const double LeastLimitMw = 1e-3;
+
     /// <param name="network">The whole network.</param>
     /// <param name="loadMw">True loads by bus, MW.</param>
     /// <param name="setPointMw">Set-points by generator, MW.</param>
@@ -42,6 +44,7 @@ public static class DeliveredDispatch
         var flows = flow.FlowMw(injection);
         var overloads = Overloads(network, flows);
         var cost = network.Generators.Select((g, i) => g.CostPerHour(output[i])).Sum();
+        var worst = Worst(network, flows);
         return new DeliveredScore
         {
             OutputMw = output,
@@ -50,7 +53,8 @@ public static class DeliveredDispatch
             CostGap = CostGap(network, loadMw, flows, overloads, cost, optimumPerHour),
             ReserveMw = reserve,
             UnbalancedMw = unbalanced,
-            WorstLoading = network.Lines.Select((l, i) => double.IsFinite(l.LimitMw) ? Math.Abs(flows[i]) / l.LimitMw : 0).DefaultIfEmpty(0).Max(),
+            WorstLoading = worst.Loading,
+            WorstLine = worst.Line,
             Overloads = overloads,
         };
     }
@@ -72,6 +76,24 @@ public static class DeliveredDispatch
         for (var i = 0; i < generators.Length; i++)
             output[generators[i]] -= used * headroom[i] / room;
         return used;
+    }
+
+    private static (double Loading, int? Line) Worst(Network network, double[] flows)
+    {
+        (double Loading, int? Line) worst = (0, null);
+        for (var l = 0; l < flows.Length; l++)
+        {
+            var limit = network.Lines[l].LimitMw;
+            if (!double.IsFinite(limit))
+                continue;
+
+            // A limit of 0 counts as 1 kW, so that loadings stay finite.
+            var loading = Math.Abs(flows[l]) / Math.Max(limit, LeastLimitMw);
+            if (worst.Line is null || loading > worst.Loading)
+                worst = (loading, l);
+        }
+
+        return worst;
     }
 
     private static Overload[] Overloads(Network network, double[] flows) => network.Lines

@@ -26,5 +26,8 @@ public sealed record DeliveredScore
     /// <summary>Largest |flow| / limit.</summary>
     public required double WorstLoading { get; init; }
 
+    /// <summary>The line of <see cref="WorstLoading"/>; null where no line has a limit.</summary>
+    public int? WorstLine { get; init; }
+
     public required IReadOnlyList<Overload> Overloads { get; init; }
 }
