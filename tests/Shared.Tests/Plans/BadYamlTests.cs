@@ -28,7 +28,7 @@ public class BadYamlTests
     [InlineData("cycles: &a 2\nstop: { rounds: *a }\n", "plan.yaml:4:17: uses an alias: write the value out")]
     [InlineData("? [a, b]\n: 1\n", "plan.yaml:3:3: has a list or a map as a key")]
     [InlineData("stop: { rounds: 2\n", "plan.yaml:4:1: is not valid YAML: ")]
-    [InlineData("\tcycles: 2\n", "plan.yaml:XX: is not valid YAML: ")]
+    [InlineData("\tcycles: 2\n", "plan.yaml:3:1: is not valid YAML: ")]
     [InlineData("---\nname: Second\n", "plan.yaml:3:1: starts a second document: a plan is one document")]
     public void A_wrong_plan_yaml_is_an_error_with_place_and_rule(string tail, string expected)
     {

@@ -27,6 +27,7 @@ internal sealed class YamlTree
     private readonly IParser _parser;
     private readonly FileProblems _problems;
     private int _parts;
+    private int _line = 1;
 
     private YamlTree(IParser parser, FileProblems problems)
     {
@@ -41,9 +42,10 @@ internal sealed class YamlTree
             return null;
         var start = TextEncoding.Start(bytes);
         var text = Encoding.UTF8.GetString(bytes, start, bytes.Length - start);
+        var tree = new YamlTree(new Parser(new StringReader(text)), problems);
         try
         {
-            return new YamlTree(new Parser(new StringReader(text)), problems).ReadDocument();
+            return tree.ReadDocument();
         }
         catch (TooDeepException tooDeep)
         {
@@ -51,7 +53,13 @@ internal sealed class YamlTree
         }
         catch (YamlException wrong)
         {
-            problems.Add((int)wrong.Start.Line, (int)wrong.Start.Column, null, null, "is not valid YAML: " + PlanError.Quotable(wrong.Message));
+            // The start is that of the last token understood; the end is where the parser stumbled.
+            problems.Add((int)wrong.End.Line, (int)wrong.End.Column, null, null, "is not valid YAML: " + PlanError.Quotable(wrong.Message));
+        }
+        catch (Exception wrong) when (wrong is InvalidOperationException or ArgumentException or IndexOutOfRangeException or FormatException)
+        {
+            // On some malformed texts the scanner of the library fails an assertion of its own instead of saying where.
+            problems.Add(tree._line, null, null, null, "is not valid YAML: the text after this line cannot be understood");
         }
 
         return null;
@@ -80,6 +88,7 @@ internal sealed class YamlTree
     {
         var at = _parser.Current!;
         var (line, column) = ((int)at.Start.Line, (int)at.Start.Column);
+        _line = line;
         if (depth > MaxDepth || ++_parts > MaxParts)
             throw new TooDeepException(line, column);
         if (_parser.TryConsume<Scalar>(out var scalar))
