@@ -62,11 +62,11 @@ internal static class CentralNetworks
         var reactance = 0.01 + (0.2 * random.NextDouble());
         if (random.Next(12) == 0)
             reactance = -0.3 * reactance;
-        var limit = random.Next(4) switch
+        var limit = random.Next(10) switch
         {
-            0 => double.PositiveInfinity,
-            1 => random.Next(10) == 0 ? 0 : 40 * random.NextDouble() / tightness,
-            _ => (60 + (200 * random.NextDouble())) / tightness,
+            0 or 1 or 2 => double.PositiveInfinity,
+            3 => random.Next(10) == 0 ? 0 : 60 * random.NextDouble() / tightness,
+            _ => (100 + (300 * random.NextDouble())) / tightness,
         };
         var swap = random.Next(2) == 0;
         lines.Add(new Line($"L{lines.Count}", swap ? to : from, swap ? from : to, reactance, limit));

@@ -6,8 +6,10 @@ namespace Halfvoice.Optimization;
 /// </summary>
 internal sealed class InteriorPoint
 {
-    // The weight of a line held at zero: its multiplier follows the flow that is left, as in a method of multipliers.
-    private const double PinnedWeight = 1e8;
+    // Proximal terms around the current point, ρ/2 dv² for blocks and δ/2 dy² for line multipliers (Friedlander and Orban 2012,
+    // from memory). They vanish with the step and keep the weights of the Newton system below 1/ρ: without them a line
+    // at its limit would drown the rest of its row in rounding. A line held at zero has nothing else.
+    private const double Proximity = 1e-9;
 
     // Steps below this, this many times in a row, mean that the iterates have nowhere to go.
     private const double ShortStep = 1e-5;
@@ -19,6 +21,7 @@ internal sealed class InteriorPoint
     private readonly Residuals _residuals;
     private readonly Iterate _step;
     private readonly double[] _weight;
+    private readonly double[] _damp;
     private readonly double[] _shift;
     private readonly double[] _belowTarget;
     private readonly double[] _aboveTarget;
@@ -35,6 +38,7 @@ internal sealed class InteriorPoint
         Best = new Iterate(program);
         _step = new Iterate(program);
         _weight = new double[program.Count];
+        _damp = new double[program.Count];
         _shift = new double[program.Count];
         _belowTarget = new double[program.Count];
         _aboveTarget = new double[program.Count];
@@ -108,7 +112,10 @@ internal sealed class InteriorPoint
         return Math.Min(primal, dual);
     }
 
-    /// <summary>dv/dλ of a block, 1 / (q + below/slack + above/slack), and the weight below/slack + above/slack of a line.</summary>
+    /// <summary>
+    /// With κ = below/slack + above/slack: dv/dλ of a block, 1 / (q + κ + ρ), and the weight κ / (1 + δκ) of a line,
+    /// together with its damping 1 / (1 + δκ).
+    /// </summary>
     private void Weigh()
     {
         for (var j = 0; j < _program.LimitedEnd; j++)
@@ -118,11 +125,12 @@ internal sealed class InteriorPoint
                 barrier += Point.BelowDual[j] / Point.BelowSlack[j];
             if (!double.IsPositiveInfinity(_program.Upper[j]))
                 barrier += Point.AboveDual[j] / Point.AboveSlack[j];
-            _weight[j] = j < _program.FreeCount ? 1 / (_program.Slope[j] + barrier) : barrier;
+            _damp[j] = 1 / (1 + (Proximity * barrier));
+            _weight[j] = j < _program.FreeCount ? 1 / (_program.Slope[j] + barrier + Proximity) : barrier * _damp[j];
         }
 
         for (var j = _program.LimitedEnd; j < _program.Count; j++)
-            _weight[j] = PinnedWeight;
+            _weight[j] = 1 / Proximity;
     }
 
     /// <summary>Right-hand side of slack · multiplier = target, with the second-order term of the last direction if asked for.</summary>
@@ -148,7 +156,8 @@ internal sealed class InteriorPoint
 
     /// <summary>
     /// Newton direction: blocks dv = w (dλ + e) with e = −r + below/slack − above/slack (targets over slacks), lines
-    /// dy = w b(dθ_f − dθ_t) + g with g = w r + above/slack − below/slack; what is left is the system of <see cref="KktSystem"/>.
+    /// dy = w b(dθ_f − dθ_t) + g with g = w r + damping · (above/slack − below/slack), and dv = b(dθ_f − dθ_t) + r − δ dy; what is
+    /// left is the system of <see cref="KktSystem"/>.
     /// </summary>
     private void Direction()
     {
@@ -169,7 +178,7 @@ internal sealed class InteriorPoint
                 continue;
             }
 
-            _shift[j] = (_weight[j] * _residuals.Item[j]) - pull;
+            _shift[j] = (_weight[j] * _residuals.Item[j]) - (_damp[j] * pull);
             var line = _program.LineOfItem[j - _program.FreeCount];
             var push = _program.Susceptance[line] * _shift[j];
             _rhsAngle[graph.From[line]] -= push;
@@ -183,11 +192,12 @@ internal sealed class InteriorPoint
         {
             var line = _program.LineOfItem[j - _program.FreeCount];
             var across = _step.Angle[graph.From[line]] - _step.Angle[graph.To[line]];
-            var flow = (_program.Susceptance[line] * across) + _residuals.Item[j];
+            var flow = _program.Susceptance[line] * across;
+            var dual = (_weight[j] * flow) + _shift[j];
             if (j < _program.LimitedEnd)
-                Complete(j, flow);
+                Complete(j, flow + _residuals.Item[j] - (Proximity * dual));
             else
-                _step.AboveDual[j] = _weight[j] * flow;
+                _step.AboveDual[j] = dual;
         }
     }
 
