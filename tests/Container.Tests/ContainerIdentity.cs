@@ -8,9 +8,6 @@ namespace Halfvoice.Containers;
 /// </summary>
 internal static class ContainerIdentity
 {
-    /// <summary>The user and the group that the Dockerfiles name.</summary>
-    private const string UserOfTheImages = "10001:10001";
-
     /// <summary>Makes the folder readable by the user who is returned, in the form "uid:gid"; never root.</summary>
     public static async Task<string> HandOverAsync(string folder, CancellationToken cancellation)
     {
@@ -19,9 +16,9 @@ internal static class ContainerIdentity
             return $"{await NumberAsync("-u", cancellation)}:{await NumberAsync("-g", cancellation)}";
         }
 
-        var owned = await ChildCommand.RunAsync("chown", ["--recursive", UserOfTheImages, folder], cancellation);
+        var owned = await ChildCommand.RunAsync("chown", ["--recursive", Lockdown.UserOfTheImages, folder], cancellation);
         Assert.True(owned.ExitCode == 0, owned.Tail);
-        return UserOfTheImages;
+        return Lockdown.UserOfTheImages;
     }
 
     private static async Task<int> NumberAsync(string option, CancellationToken cancellation)

@@ -14,7 +14,7 @@ internal sealed record CycleLine(int Cycle, bool Settled)
         foreach (var line in output.Split('\n', StringSplitOptions.RemoveEmptyEntries))
         {
             using var json = JsonDocument.Parse(line);
-            if (json.RootElement.GetProperty("event").GetString() == "cycle")
+            if (json.RootElement.TryGetProperty("event", out var kind) && kind.GetString() == "cycle")
             {
                 cycles.Add(new CycleLine(json.RootElement.GetProperty("cycle").GetInt32(), json.RootElement.GetProperty("settled").GetBoolean()));
             }

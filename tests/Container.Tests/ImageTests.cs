@@ -42,7 +42,10 @@ public sealed class ImageTests(ContainerEngine engine)
     public async Task An_image_runs_as_a_user_other_than_root(string image)
     {
         engine.RequireImages();
-        var (exitCode, said) = await RunAsync(Lockdown.Container(image).WithEntrypoint("/bin/cat").WithCommand("/proc/self/status"));
+        var definition = Lockdown.Container(image)
+            .WithCreateParameterModifier(parameters => parameters.User = string.Empty)
+            .WithEntrypoint("/bin/cat").WithCommand("/proc/self/status");
+        var (exitCode, said) = await RunAsync(definition);
         Assert.True(exitCode == 0, $"exit code {exitCode}: {said}");
         Assert.Contains("Uid:\t10001\t10001\t10001\t10001", said, StringComparison.Ordinal);
         Assert.Contains("CapEff:\t0000000000000000", said, StringComparison.Ordinal);

@@ -1,3 +1,5 @@
+using System.Globalization;
+using System.Text;
 using DotNet.Testcontainers.Builders;
 using DotNet.Testcontainers.Configurations;
 using DotNet.Testcontainers.Containers;
@@ -44,7 +46,7 @@ internal sealed class Lab : IAsyncDisposable
 
     /// <summary>Waits until every container has ended by itself.</summary>
     /// <returns>The exit code of each, by name.</returns>
-    /// <exception cref="TimeoutException">The time was up first; the message holds the last lines of the coordinator.</exception>
+    /// <exception cref="TimeoutException">The time was up first; the message holds everyone's last lines.</exception>
     public async Task<IReadOnlyDictionary<string, long>> ExitCodesAsync(CancellationToken cancellation)
     {
         try
@@ -59,14 +61,27 @@ internal sealed class Lab : IAsyncDisposable
         }
         catch (OperationCanceledException timeIsUp)
         {
-            var said = (await CoordinatorOutputAsync(CancellationToken.None)).Split('\n').TakeLast(30);
-            throw new TimeoutException($"Not every container ended in time. The coordinator's last lines:\n{string.Join('\n', said)}", timeIsUp);
+            throw new TimeoutException($"Not every container ended in time. {await LastLinesAsync()}", timeIsUp);
         }
     }
 
     /// <summary>All that the coordinator wrote to its standard output so far.</summary>
     public async Task<string> CoordinatorOutputAsync(CancellationToken cancellation) =>
         (await _coordinator.GetLogsAsync(timestampsEnabled: false, ct: cancellation)).Stdout;
+
+    /// <summary>The last lines of every container, for the message of a failed test.</summary>
+    public async Task<string> LastLinesAsync()
+    {
+        var report = new StringBuilder();
+        foreach (var (name, container) in _agents.Prepend((CoordinatorName, _coordinator)))
+        {
+            var (output, errors) = await container.GetLogsAsync(timestampsEnabled: false);
+            var lines = (output + errors).TrimEnd().Split('\n').TakeLast(10);
+            report.AppendLine(CultureInfo.InvariantCulture, $"{name}:").AppendJoin('\n', lines).AppendLine();
+        }
+
+        return report.ToString();
+    }
 
     /// <inheritdoc/>
     public async ValueTask DisposeAsync()

@@ -13,19 +13,29 @@ internal static class Lockdown
     public const string AgentImage = "halfvoice-agent:local";
     public const string CoordinatorImage = "halfvoice-coordinator:local";
 
+    /// <summary>The user and the group that the Dockerfiles name.</summary>
+    public const string UserOfTheImages = "10001:10001";
+
     /// <summary>A container of a local image (never pulled) under all restrictions, with an empty /state.</summary>
     /// <param name="image">One of the images above.</param>
-    /// <param name="user">"uid:gid", or null for the user that the image names.</param>
-    public static ContainerBuilder Container(string image, string? user = null) =>
+    /// <param name="user">Who runs it and owns its /state: "uid:gid".</param>
+    public static ContainerBuilder Container(string image, string user = UserOfTheImages) =>
         new ContainerBuilder(image)
             .WithImagePullPolicy(PullPolicy.Never)
-            .WithTmpfsMount("/state")
             .WithCreateParameterModifier(parameters =>
             {
-                parameters.User = user ?? parameters.User;
+                parameters.User = user;
                 parameters.HostConfig ??= new HostConfig();
+                parameters.HostConfig.Tmpfs = new Dictionary<string, string> { ["/state"] = OwnedBy(user) };
                 parameters.HostConfig.ReadonlyRootfs = true;
                 parameters.HostConfig.CapDrop = ["ALL"];
                 parameters.HostConfig.SecurityOpt = ["no-new-privileges"];
             });
+
+    /// <summary>Mount options of a folder in memory that one user alone may enter.</summary>
+    private static string OwnedBy(string user)
+    {
+        var (uid, gid) = user.Split(':') is [var first, var second] ? (first, second) : throw new ArgumentException("Not of the form uid:gid.", nameof(user));
+        return $"uid={uid},gid={gid},mode=0700";
+    }
 }
