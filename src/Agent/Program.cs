@@ -33,7 +33,7 @@ internal static class AgentProgram
             log.Fatal("Cannot start: {Problem}", wrong.Message);
             return ExitCodes.WrongSetup;
         }
-        catch (Exception broken) when (broken is IOException or SqliteException)
+        catch (Exception broken) when (broken is IOException or SqliteException or InvalidOperationException)
         {
             log.Fatal("Broken off: {Problem}", broken.Message);
             return ExitCodes.Broken;

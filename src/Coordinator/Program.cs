@@ -63,7 +63,7 @@ internal static class CoordinatorProgram
             log.Information("Resuming after {Round} from the journal", end.Last);
         }
 
-        var progress = new ProgressLines(Console.OpenStandardOutput(), setup);
+        using var progress = new ProgressLines(Console.OpenStandardOutput(), setup);
         using var host = new DispatchHost(setup, core, journal, progress, TimeProvider.System, log);
         using var authority = X509CertificateLoader.LoadCertificateFromFile(Path.Combine(options.Bundle, "authority.pem"));
         using var identity = X509Certificate2.CreateFromPemFile(Path.Combine(options.Bundle, "identity.pem"), Path.Combine(options.Bundle, "identity.key"));
@@ -75,7 +75,7 @@ internal static class CoordinatorProgram
         Lifeline.Watch(() => host.Events.Writer.TryWrite(new HostEvent.Stop()));
         using var terminate = PosixSignalRegistration.Create(PosixSignal.SIGTERM, AskToStop);
         using var interrupt = PosixSignalRegistration.Create(PosixSignal.SIGINT, AskToStop);
-        var address = new Uri(app.Services.GetRequiredService<IServer>().Features.GetRequiredFeature<IServerAddressesFeature>().Addresses.First());
+        var address = new Uri(app.Services.GetRequiredService<IServer>().Features.Get<IServerAddressesFeature>()!.Addresses.First());
         progress.Ready(address.Host, address.Port);
         log.Information("Plan {Plan}: listening on {Host}:{Port} for {Sites} sites", setup.Plan, address.Host, address.Port, setup.Sites.Count);
 

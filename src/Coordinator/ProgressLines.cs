@@ -7,7 +7,7 @@ namespace Halfvoice.Coordinator;
 /// Progress as JSON lines on standard output, for the rig and for log collectors. Rounds are thinned to a few lines a
 /// second; cycles are always told.
 /// </summary>
-internal sealed class ProgressLines
+internal sealed class ProgressLines : IDisposable
 {
     private static readonly TimeSpan RoundSpacing = TimeSpan.FromMilliseconds(100);
 
@@ -71,6 +71,8 @@ internal sealed class ProgressLines
                 break;
         }
     }
+
+    public void Dispose() => _buffer.Dispose();
 
     private void Measure(Utf8JsonWriter json, RoundMeasure measure)
     {

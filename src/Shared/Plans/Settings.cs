@@ -18,7 +18,7 @@ public sealed record SchemeSettings
     /// <summary>Plan key <c>penalty</c>: absent or <c>auto</c> is 1; a number multiplies the automatic penalty; above 0, at most 1000.</summary>
     public double PenaltyFactor { get; init; } = 1;
 
-    /// <summary>Over-relaxation, 1 to below 2; absent is the scheme's own default (injection 1.2, angle 1.6).</summary>
+    /// <summary>Over-relaxation, 1 to below 2; absent is the scheme's own default (injection 1.2, angle 1).</summary>
     public double? Relaxation { get; init; }
 
     /// <summary>Plan key <c>price_scale</c>: the public price scale L, $/MWh, above 0; absent or <c>auto</c> derives it from the plants.</summary>

@@ -1,5 +1,4 @@
 using Halfvoice.Coordination;
-using V1 = Halfvoice.Wire.V1;
 
 namespace Halfvoice.Wire;
 
@@ -79,11 +78,11 @@ public sealed class CoordinatorWire
     {
         if (id.Cycle == 0 || outcome.End == V1.CycleEnd.Unspecified || !Enum.IsDefined(outcome.End) || outcome.Rounds > int.MaxValue)
             return (null, new WireFault(RefusalReason.Malformed, "An outcome names its cycle, its end and its rounds."));
-        if (outcome.Consensus.Count > WireContract.MaxComponents || outcome.PricePerMwh.Count > WireContract.MaxComponents)
-            return (null, new WireFault(RefusalReason.Malformed, "The outcome has more numbers than any site has."));
-        if (!AllFinite(outcome.Consensus) || !AllFinite(outcome.PricePerMwh))
+        if (outcome.Consensus.Count > WireContract.MaxComponents || outcome.Dual.Count != outcome.Consensus.Count)
+            return (null, new WireFault(RefusalReason.Malformed, "An outcome has one consensus value and one dual for each component."));
+        if (!AllFinite(outcome.Consensus) || !AllFinite(outcome.Dual))
             return (null, new WireFault(RefusalReason.OutOfRange, "A number of the outcome is not finite."));
-        var read = new Outcome(id.Cycle, (CycleEnd)((int)outcome.End - 1), (int)outcome.Rounds, [.. outcome.Consensus], [.. outcome.PricePerMwh]);
+        var read = new Outcome(id.Cycle, (CycleEnd)((int)outcome.End - 1), (int)outcome.Rounds, [.. outcome.Consensus], [.. outcome.Dual]);
         return (new FromCoordinatorMessage.Ended(read), null);
     }
 

@@ -1,5 +1,4 @@
 using Halfvoice.Coordination;
-using V1 = Halfvoice.Wire.V1;
 
 namespace Halfvoice.Wire;
 

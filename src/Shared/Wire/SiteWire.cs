@@ -1,5 +1,4 @@
 using Halfvoice.Coordination;
-using V1 = Halfvoice.Wire.V1;
 
 namespace Halfvoice.Wire;
 
@@ -60,7 +59,7 @@ public sealed class SiteWire
             case CoordinatorMessage.Ended ended:
                 var outcome = new V1.Outcome { End = (V1.CycleEnd)((int)ended.Outcome.End + 1), Rounds = (uint)ended.Outcome.Rounds };
                 outcome.Consensus.AddRange(ended.Outcome.Consensus);
-                outcome.PricePerMwh.AddRange(ended.Outcome.PricePerMwh);
+                outcome.Dual.AddRange(ended.Outcome.Dual);
                 return new V1.FromCoordinator { Header = _writer.Next(new RoundId(ended.Outcome.Cycle, ended.Outcome.Rounds)), Outcome = outcome };
             case CoordinatorMessage.Farewell farewell:
                 return new V1.FromCoordinator { Header = _writer.Next(RoundId.None), Farewell = new V1.Farewell { Text = farewell.Text } };

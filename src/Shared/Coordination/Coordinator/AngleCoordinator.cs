@@ -41,7 +41,4 @@ public sealed class AngleCoordinator : CoordinatorScheme
         for (var k = 0; k < wish.Length; k++)
             consensus[k] = _sum[_busOf[k]] / _weightOfBus[_busOf[k]];
     }
-
-    /// <summary>Prices stay with the sites: the coordinator knows only what an angle is worth.</summary>
-    protected override double[] PricesOf(ReadOnlySpan<double> dual) => [];
 }

@@ -299,8 +299,8 @@ public sealed class CoordinatorCore
             _seats[s].Awaited = false;
             if (!_seats[s].Joined)
                 continue;
-            var (consensus, prices) = _scheme.Final(s);
-            _out.Send.Add((s, new CoordinatorMessage.Ended(new Outcome(_id.Cycle, end, rounds, consensus, prices))));
+            var (consensus, dual) = _scheme.Final(s);
+            _out.Send.Add((s, new CoordinatorMessage.Ended(new Outcome(_id.Cycle, end, rounds, consensus, dual))));
         }
 
         _scheme.EndCycle();

@@ -118,15 +118,15 @@ public abstract class CoordinatorScheme
     }
 
     /// <summary>
-    /// Consensus and price that a site is told at the end of a cycle: with noise the mean over the last rounds, which is
+    /// Consensus and dual that a site is told at the end of a cycle: with noise the mean over the last rounds, which is
     /// post-processing of released values and as network-feasible as each of its terms.
     /// </summary>
-    public (double[] Consensus, double[] PricePerMwh) Final(int site)
+    public (double[] Consensus, double[] Dual) Final(int site)
     {
         var (consensus, dual) = Trail.Mean(Consensus, Dual);
         var start = Map.Start(site);
-        var values = consensus.AsSpan(start, Map.CountOf(site)).ToArray();
-        return (values, PricesOf(dual.AsSpan(start, values.Length)));
+        var count = Map.CountOf(site);
+        return (consensus.AsSpan(start, count).ToArray(), dual.AsSpan(start, count).ToArray());
     }
 
     /// <summary>Ends a cycle: the next one starts from the means where there was noise.</summary>
@@ -140,7 +140,4 @@ public abstract class CoordinatorScheme
     /// <summary>Finds the consensus nearest to what sites want, in the metric of the penalties.</summary>
     /// <param name="wish">x̂ + u/ρ by component; released data where a component cannot move.</param>
     protected abstract void FindConsensus(ReadOnlySpan<double> wish, Span<double> consensus);
-
-    /// <summary>Prices at a site's components, $/MWh; empty where the scheme does not show them to the coordinator.</summary>
-    protected abstract double[] PricesOf(ReadOnlySpan<double> dual);
 }

@@ -42,15 +42,6 @@ public sealed class InjectionCoordinator : CoordinatorScheme
             consensus[k] = _consensusByBus[_busOf[k]];
     }
 
-    /// <summary>u is what an injection costs the site, so the price that it is paid is −u.</summary>
-    protected override double[] PricesOf(ReadOnlySpan<double> dual)
-    {
-        var prices = new double[dual.Length];
-        for (var i = 0; i < prices.Length; i++)
-            prices[i] = -dual[i];
-        return prices;
-    }
-
     private static Network PublicNetwork(CoordinatorSetup setup)
     {
         var site = new Dictionary<string, string>(StringComparer.Ordinal);

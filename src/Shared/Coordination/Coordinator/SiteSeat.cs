@@ -50,7 +50,7 @@ internal sealed class SiteSeat
         values = new double[answer.Steps.Length];
         for (var i = 0; i < values.Length; i++)
         {
-            if (Math.Abs((Int128)answer.Steps[i]) > _boundSteps)
+            if (Int128.Abs(answer.Steps[i]) > _boundSteps)
                 return false;
             values[i] = answer.Steps[i] * _step;
         }

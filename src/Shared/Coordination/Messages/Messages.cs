@@ -104,5 +104,5 @@ public enum CycleEnd
     Stopped,
 }
 
-/// <summary>The end of a cycle as told to a site: consensus and price for each of its components (all of them).</summary>
-public sealed record Outcome(int Cycle, CycleEnd End, int Rounds, double[] Consensus, double[] PricePerMwh);
+/// <summary>The end of a cycle as told to a site: consensus and dual for each of its components (all of them), in the units of an ask.</summary>
+public sealed record Outcome(int Cycle, CycleEnd End, int Rounds, double[] Consensus, double[] Dual);

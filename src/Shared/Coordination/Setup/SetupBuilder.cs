@@ -19,7 +19,7 @@ public sealed class SetupBuilder
     public const double InjectionRelaxation = 1.2;
 
     /// <summary>Default over-relaxation of scheme angle.</summary>
-    public const double AngleRelaxation = 1.6;
+    public const double AngleRelaxation = 1;
 
     private readonly Plan _plan;
     private readonly Network _network;

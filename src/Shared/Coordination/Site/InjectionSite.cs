@@ -1,4 +1,3 @@
-using Halfvoice.Grid;
 using Halfvoice.Optimization;
 
 namespace Halfvoice.Coordination;

@@ -195,7 +195,7 @@ public sealed class SiteCore
     private void EndCycle(Outcome outcome)
     {
         SettleBlock();
-        if (outcome.Consensus.Length != _scheme.ComponentCount)
+        if (outcome.Consensus.Length != _scheme.ComponentCount || outcome.Dual.Length != _scheme.ComponentCount)
         {
             Refuse(new RoundId(outcome.Cycle, outcome.Rounds), RefusalReason.Malformed, $"This site has {_scheme.ComponentCount} components.");
             return;
