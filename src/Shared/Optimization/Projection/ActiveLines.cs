@@ -112,12 +112,18 @@ internal sealed class ActiveLines
         }
     }
 
-    /// <summary>Solves G x = right; one step of refinement.</summary>
+    /// <summary>Solves G x = right.</summary>
     public void Solve(ReadOnlySpan<double> right, Span<double> solution)
     {
         right[..Count].CopyTo(solution);
         Forward(solution[..Count]);
         Backward(solution[..Count]);
+    }
+
+    /// <summary>Solves G x = right with one step of refinement.</summary>
+    public void SolveRefined(ReadOnlySpan<double> right, Span<double> solution)
+    {
+        Solve(right, solution);
         var rest = _work.AsSpan(0, Count);
         for (var i = 0; i < Count; i++)
             rest[i] = right[i] - Dense.Dot(_matrix.AsSpan(i * _capacity, Count), solution);

@@ -39,6 +39,7 @@ public sealed class NetworkProjection
     private readonly double[] _move;
     private double[] _products = new double[16];
     private double[] _response = new double[16];
+    private double[] _keptFlow = new double[16];
     private NetworkProgram? _program;
     private int _steps;
 
@@ -144,20 +145,69 @@ public sealed class NetworkProjection
     private bool HoldLines(Span<double> projectedMw)
     {
         Flows(_balanced, _openFlow);
+        double size = 1;
+        foreach (var flow in _openFlow)
+            size = Math.Max(size, Math.Abs(flow));
+        var tolerance = ViolationTolerance * size;
         DropStale();
         var most = 20 + (10 * _graph.LineCount);
         while (true)
         {
             Place(projectedMw);
             Flows(projectedMw, _flow);
-            var worst = MostViolated();
-            if (worst < 0)
+            if (!KeepViolated(tolerance))
                 return true;
-            if (!TakeIn(worst) || ++_steps > most)
+            if (!HoldKept(tolerance, most))
             {
                 _active.Clear();
                 return false;
             }
+        }
+    }
+
+    /// <summary>Keeps the rows of all lines that are over their limit; false if there are none.</summary>
+    private bool KeepViolated(double tolerance)
+    {
+        var found = false;
+        for (var l = 0; l < _flow.Length; l++)
+        {
+            if (Math.Abs(_flow[l]) - _graph.LimitMw[l] <= tolerance || _active.Contains(l))
+                continue;
+            _rows.Keep(l, _active.Lines);
+            found = true;
+        }
+
+        return found;
+    }
+
+    /// <summary>
+    /// Solves the problem with the limits of the kept lines alone, whose flows follow from the products of their rows:
+    /// open flow − Σ y aᵀa'. All flows of the network are looked at again only after that.
+    /// </summary>
+    private bool HoldKept(double tolerance, int most)
+    {
+        if (_keptFlow.Length < _rows.Count)
+            _keptFlow = new double[2 * _rows.Count];
+        while (true)
+        {
+            var count = _rows.Count;
+            for (var slot = 0; slot < count; slot++)
+                _keptFlow[slot] = _openFlow[_rows.LineAt(slot)];
+            for (var k = 0; k < _active.Count; k++)
+                Dense.Add(-_active.Multipliers[k], _rows.ProductsOf(_active.Lines[k]), _keptFlow);
+            var worst = -1;
+            var largest = tolerance;
+            for (var slot = 0; slot < count; slot++)
+            {
+                var violation = Math.Abs(_keptFlow[slot]) - _graph.LimitMw[_rows.LineAt(slot)];
+                if (violation > largest && !_active.Contains(_rows.LineAt(slot)))
+                    (worst, largest) = (slot, violation);
+            }
+
+            if (worst < 0)
+                return true;
+            if (++_steps > most || !TakeIn(_rows.LineAt(worst), _keptFlow[worst]))
+                return false;
         }
     }
 
@@ -199,7 +249,7 @@ public sealed class NetworkProjection
             _products[k] = _openFlow[line] - (_active.Sides[k] * _graph.LimitMw[line]);
         }
 
-        _active.Solve(_products, _active.Multipliers);
+        _active.SolveRefined(_products, _active.Multipliers);
     }
 
     private void Room()
@@ -219,38 +269,21 @@ public sealed class NetworkProjection
         SolveMultipliers();
         Array.Clear(_move);
         for (var k = 0; k < _active.Count; k++)
-            Dense.Add(_active.Multipliers[k], _rows.Known(_active.Lines[k]), _move);
+            Dense.Add(_active.Multipliers[k], _rows.RowOf(_active.Lines[k]), _move);
         for (var k = 0; k < _freeBus.Length; k++)
             projectedMw[_freeBus[k]] -= _rootWeight[k] * _move[k];
-    }
-
-    private int MostViolated()
-    {
-        double size = 1;
-        foreach (var flow in _openFlow)
-            size = Math.Max(size, Math.Abs(flow));
-        var worst = -1;
-        var most = ViolationTolerance * size;
-        for (var l = 0; l < _flow.Length; l++)
-        {
-            var violation = Math.Abs(_flow[l]) - _graph.LimitMw[l];
-            if (violation > most && !_active.Contains(l))
-                (worst, most) = (l, violation);
-        }
-
-        return worst;
     }
 
     /// <summary>
     /// Raises the multiplier t of a violated line p. With r = G⁻¹(aᵢᵀa_p) the held multipliers fall by t r, their flows stay, and the flow
     /// of p falls by t (a_pᵀa_p − rᵀ(aᵢᵀa_p)). Lines whose multiplier reaches zero first are dropped on the way. False: no t will do.
     /// </summary>
-    private bool TakeIn(int line)
+    private bool TakeIn(int line, double flowMw)
     {
-        var row = _rows.Of(line, _active.Lines);
-        var own = Dense.Dot(row, row);
-        var side = (double)Math.Sign(_flow[line]);
-        var violation = Math.Abs(_flow[line]) - _graph.LimitMw[line];
+        var products = _rows.ProductsOf(line);
+        var own = products[_rows.SlotOf(line)];
+        var side = (double)Math.Sign(flowMw);
+        var violation = Math.Abs(flowMw) - _graph.LimitMw[line];
         double raised = 0;
         if (own <= 1e-13 * _islandWeight[_graph.IslandOf[_graph.From[line]]])
             return false;
@@ -259,7 +292,7 @@ public sealed class NetworkProjection
             Room();
             var count = _active.Count;
             for (var k = 0; k < count; k++)
-                _products[k] = Dense.Dot(row, _rows.Known(_active.Lines[k]));
+                _products[k] = products[_rows.SlotOf(_active.Lines[k])];
             _active.Solve(_products, _response);
             var unexplained = own - Dense.Dot(_response.AsSpan(0, count), _products);
             var full = unexplained > Dependent * own ? violation / unexplained : double.PositiveInfinity;
