@@ -1,0 +1,180 @@
+using Halfvoice.Grid;
+using Halfvoice.Optimization;
+using MathNet.Numerics.LinearAlgebra;
+
+namespace Halfvoice.Tests.Optimization;
+
+public class CentralProjectionTests
+{
+    private const double PriceScale = 50;
+
+    /// <summary>A random network, penalties and free marks; limits loose enough that most wishes have a projection.</summary>
+    private static (Network Network, double[] LoadMw, double[] Penalty, bool[] Free) Case(Random random)
+    {
+        var (network, load) = CentralNetworks.Random(random, quadratic: false);
+        var penalty = load.Select(_ => 0.05 + (2 * random.NextDouble())).ToArray();
+        var free = load.Select(_ => random.Next(3) != 0).ToArray();
+        return (network, load, penalty, free);
+    }
+
+    private static double[] Wish(Random random, double[] load, bool[] free) =>
+        load.Select((mw, i) => (free[i] ? 150 * (random.NextDouble() - 0.5) : 0) - (0.2 * mw)).ToArray();
+
+    /// <summary>Flow sensitivities from dense algebra: H = diag(b) A B⁺.</summary>
+    private static Matrix<double> Sensitivities(Network network)
+    {
+        var incidence = Matrix<double>.Build.Dense(network.Lines.Count, network.Buses.Count);
+        var weighted = Matrix<double>.Build.Dense(network.Lines.Count, network.Buses.Count);
+        for (var l = 0; l < network.Lines.Count; l++)
+        {
+            var line = network.Lines[l];
+            incidence[l, line.FromBus] = 1;
+            incidence[l, line.ToBus] = -1;
+            weighted[l, line.FromBus] = 1 / line.ReactancePu;
+            weighted[l, line.ToBus] = -1 / line.ReactancePu;
+        }
+
+        var susceptance = incidence.TransposeThisAndMultiply(weighted);
+        foreach (var island in Islands(network))
+        {
+            // Adding the all-ones matrix on an island makes B invertible and leaves flows of balanced injections alone.
+            foreach (var a in island)
+            {
+                foreach (var b in island)
+                    susceptance[a, b] += 10;
+            }
+        }
+
+        return weighted * susceptance.Inverse();
+    }
+
+    private static List<int[]> Islands(Network network)
+    {
+        var seen = new bool[network.Buses.Count];
+        var islands = new List<int[]>();
+        for (var first = 0; first < seen.Length; first++)
+        {
+            if (seen[first])
+                continue;
+            var island = new List<int> { first };
+            seen[first] = true;
+            for (var k = 0; k < island.Count; k++)
+            {
+                foreach (var l in network.LinesAt(island[k]))
+                {
+                    var other = network.Lines[l].FromBus + network.Lines[l].ToBus - island[k];
+                    if (!seen[other])
+                        island.Add(other);
+                    seen[other] = true;
+                }
+            }
+
+            islands.Add([.. island]);
+        }
+
+        return islands;
+    }
+
+    /// <summary>Feasibility, complementarity, and ρ(z − wish) + Hᵀy equal over the free buses of an island.</summary>
+    private static void CertificateHolds(
+        Network network, double[] penalty, bool[] free, double[] wish, double[] z, ReadOnlySpan<double> linePrice, string what)
+    {
+        var size = Math.Max(1, wish.Max(Math.Abs));
+        var sensitivities = Sensitivities(network);
+        var flow = sensitivities * Vector<double>.Build.Dense(z);
+        var multiplier = new double[network.Lines.Count];
+        var flowSize = Math.Max(size, flow.AbsoluteMaximum());
+        for (var l = 0; l < multiplier.Length; l++)
+        {
+            var limit = network.Lines[l].LimitMw;
+            Assert.True(Math.Abs(flow[l]) <= limit + (1e-9 * flowSize), $"{what}: line {l} carries {flow[l]}, limit {limit}");
+            Assert.True(linePrice[l] >= 0);
+            Assert.True(linePrice[l] == 0 || Math.Abs(flow[l]) >= limit - (1e-9 * flowSize), $"{what}: line {l} has a price off its limit");
+            multiplier[l] = Math.Sign(flow[l]) * linePrice[l];
+        }
+
+        var pull = sensitivities.TransposeThisAndMultiply(Vector<double>.Build.Dense(multiplier));
+        foreach (var island in Islands(network))
+        {
+            Assert.True(Math.Abs(island.Sum(i => z[i])) <= 1e-9 * size, $"{what}: an island is out of balance");
+            var marginal = island.Where(i => free[i]).Select(i => (penalty[i] * (z[i] - wish[i])) + pull[i]).ToArray();
+            if (marginal.Length > 0)
+            {
+                var scale = Math.Max(PriceScale, Math.Max(linePrice.ToArray().Max(), marginal.Max(Math.Abs)));
+                Assert.True(marginal.Max() - marginal.Min() <= 1e-8 * scale, $"{what}: prices differ by {marginal.Max() - marginal.Min()}");
+            }
+        }
+
+        for (var i = 0; i < z.Length; i++)
+            Assert.True(free[i] || z[i] == wish[i], $"{what}: bus {i} was moved");
+    }
+
+    /// <summary>500 networks, five wishes each through one projection, so that every call but the first starts warm.</summary>
+    [Fact]
+    public void Projections_meet_the_optimality_conditions_and_forget_where_they_started()
+    {
+        int binding = 0, relaxed = 0;
+        for (var seed = 0; seed < 500; seed++)
+        {
+            var random = new Random(seed);
+            var (network, load, penalty, free) = Case(random);
+            var warm = new NetworkProjection(network, penalty, free, PriceScale);
+            var z = new double[load.Length];
+            var again = new double[load.Length];
+            for (var call = 0; call < 5; call++)
+            {
+                var wish = Wish(random, load, free);
+                var outcome = warm.Project(wish, z);
+                Assert.True(outcome.Converged, $"seed {seed}, call {call}");
+                if (outcome.Relaxed)
+                {
+                    relaxed++;
+                    continue;
+                }
+
+                binding += outcome.ActiveLines;
+                // A line held at 0 MW hides the sign of its multiplier, so its price cannot be checked from outside.
+                if (network.Lines.All(line => line.LimitMw > 0))
+                    CertificateHolds(network, penalty, free, wish, z, warm.LinePricePerMwh, $"seed {seed}, call {call}");
+                var cold = new NetworkProjection(network, penalty, free, PriceScale).Project(wish, again);
+                Assert.False(cold.Relaxed);
+                var size = Math.Max(1, wish.Max(Math.Abs));
+                for (var i = 0; i < z.Length; i++)
+                    Assert.True(Math.Abs(z[i] - again[i]) <= 1e-9 * size, $"seed {seed}, call {call}, bus {i}: {z[i]} warm, {again[i]} cold");
+            }
+        }
+
+        Assert.True(binding >= 500 && relaxed is >= 50 and <= 1500, $"{binding} lines held, {relaxed} relaxed");
+    }
+
+    [Fact]
+    public void Projections_agree_with_the_interior_point_method()
+    {
+        for (var seed = 2000; seed < 2500; seed++)
+        {
+            var random = new Random(seed);
+            var (network, load, penalty, free) = Case(random);
+            var wish = Wish(random, load, free);
+            var z = new double[load.Length];
+            var outcome = new NetworkProjection(network, penalty, free, PriceScale).Project(wish, z);
+            var moves = Enumerable.Range(0, load.Length).Where(i => free[i])
+                .Select(i => new Block(i, double.NegativeInfinity, double.PositiveInfinity, 0, penalty[i])).ToArray();
+            var demand = wish.Select(mw => -mw).ToArray();
+            var other = outcome.Relaxed
+                ? new NetworkProgram(network).SolveElastic(moves, demand, 10 * PriceScale)
+                : new NetworkProgram(network).Solve(moves, demand);
+            Assert.True(other.Converged, $"seed {seed}, relaxed {outcome.Relaxed}");
+            if (outcome.Relaxed)
+            {
+                Assert.Equal(other.ShedMw.Sum() + other.SpillMw.Sum(), outcome.UnservedMw, 1e-6);
+                continue;
+            }
+
+            for (var k = 0; k < moves.Length; k++)
+            {
+                var moved = wish[moves[k].Bus] + other.BlockMw[k];
+                Assert.True(Math.Abs(moved - z[moves[k].Bus]) <= 1e-5, $"seed {seed}, bus {moves[k].Bus}: {z[moves[k].Bus]}, {moved}");
+            }
+        }
+    }
+}
