@@ -8,27 +8,28 @@ internal sealed record AreaInstance(AreaModel Model, double[] LoadMw, double[] A
     public static AreaInstance From(int seed, int busesMost = 8)
     {
         var random = new Random(seed);
+        var slack = random.Next(3) == 0 ? 1 : 15;
         var own = random.Next(1, busesMost + 1);
         var foreign = random.Next(5) == 0 ? 0 : random.Next(1, 5);
         var lines = new List<AreaLine>();
         for (var bus = 1; bus < own; bus++)
-            lines.Add(Line(random, bus, random.Next(bus)));
+            lines.Add(Line(random, slack, bus, random.Next(bus)));
         for (var extra = random.Next(own); own > 1 && extra > 0; extra--)
         {
             var from = random.Next(own);
-            lines.Add(Line(random, from, (from + random.Next(1, own)) % own));
+            lines.Add(Line(random, slack, from, (from + random.Next(1, own)) % own));
         }
 
         for (var node = own; node < own + foreign; node++)
         {
             for (var ties = random.Next(1, 3); ties > 0; ties--)
-                lines.Add(Line(random, random.Next(own), node));
+                lines.Add(Line(random, slack, random.Next(own), node));
         }
 
         var border = lines.Where(line => line.From >= own || line.To >= own).Select(line => Math.Min(line.From, line.To));
         var copies = border.Distinct().Concat(Enumerable.Range(own, foreign)).ToArray();
         var weights = copies.Select(_ => SiteInstances.LogUniform(random, 1e3, 1e7)).ToArray();
-        var generators = random.Next(12) == 0 ? [] : SiteInstances.Generators(random, 2 + own, own);
+        var generators = random.Next(12) == 0 ? [] : SiteInstances.Generators(random, 3 + (2 * own), own);
         var model = new AreaModel(own, generators, lines, copies, weights, SiteInstances.UnservedPrice);
         var loads = Enumerable.Range(0, own).Select(_ => 250 * (random.NextDouble() - 0.2)).ToArray();
         return new AreaInstance(model, loads, copies.Select(_ => 0.4 * (random.NextDouble() - 0.5)).ToArray());
@@ -43,10 +44,10 @@ internal sealed record AreaInstance(AreaModel Model, double[] LoadMw, double[] A
         return new AreaInstance(model, [nodal.LoadMw], nodal.AnchorRad);
     }
 
-    private static AreaLine Line(Random random, int from, int to)
+    private static AreaLine Line(Random random, double slack, int from, int to)
     {
         var limit = SiteInstances.Limit(random);
-        return new AreaLine(from, to, SiteInstances.Susceptance(random), limit == 0 && random.Next(3) > 0 ? 60 : limit);
+        return new AreaLine(from, to, SiteInstances.Susceptance(random), limit == 0 && random.Next(4) > 0 ? 60 : slack * limit);
     }
 }
 

@@ -66,6 +66,13 @@ public sealed class AreaAngleProblem
     /// <summary>Load shed (positive) or power spilt (negative) at each own bus in the last solve, MW.</summary>
     public ReadOnlySpan<double> UnservedMw => _unservedMw;
 
+    /// <summary>Forgets the last solve's head start. Answers do not change beyond rounding; the next solve takes longer.</summary>
+    public void Forget()
+    {
+        _served.Forget();
+        _unserved?.Forget();
+    }
+
     /// <summary>Solves for one set of loads and anchors.</summary>
     /// <param name="loadMw">Loads of the own buses, MW; may be negative.</param>
     /// <param name="anchorRad">a_c, rad, in the order of the model's copies.</param>

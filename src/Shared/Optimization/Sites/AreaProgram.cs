@@ -22,11 +22,18 @@ internal sealed class AreaProgram
     /// <summary>Stationary when the proximal pull is below this share of the price scale.</summary>
     private const double StationaryShare = 1e-10;
 
+    /// <summary>What is still an answer when rounding keeps the pull from getting smaller within the bounded steps.</summary>
+    private const double AcceptableShare = 1e-7;
+
+    /// <summary>Prices of this share of the dearest unit's set how small a pull can be told from rounding.</summary>
+    private const double RoundingShare = 0.01;
+
     private readonly int _angles;
     private readonly int _own;
     private readonly IReadOnlyList<AreaUnit> _units;
     private readonly DualActiveSet _solver;
     private readonly double _priceScale;
+    private readonly double _stationaryScale;
     private readonly double[] _weight;
     private readonly double[] _curvature;
     private readonly double[] _proximal;
@@ -52,6 +59,7 @@ internal sealed class AreaProgram
         _own = model.OwnBusCount;
         _units = units;
         _priceScale = priceScale;
+        _stationaryScale = Math.Max(priceScale, RoundingShare * units.Select(unit => Math.Abs(unit.CostLinear)).DefaultIfEmpty(0).Max());
         _weight = [.. model.CopyWeights];
         var n = _angles + units.Count;
         (_curvature, _proximal, _startCentre, _cost) = (new double[n], new double[n], new double[n], new double[n]);
@@ -78,6 +86,8 @@ internal sealed class AreaProgram
 
     public int OuterSteps { get; private set; }
 
+    public void Forget() => _solver.Forget();
+
     /// <summary>Solves for net loads (loads less fixed outputs) and anchors.</summary>
     public DualActiveSetStatus Solve(ReadOnlySpan<double> netLoadMw, ReadOnlySpan<double> anchorRad)
     {
@@ -85,36 +95,37 @@ internal sealed class AreaProgram
         for (var c = 0; c < anchorRad.Length; c++)
             _cost[c] = -_weight[c] * anchorRad[c];
         _startCentre.CopyTo(_centre, 0);
-        for (OuterSteps = 1; OuterSteps <= OuterStepsMax; OuterSteps++)
+        for (OuterSteps = 1; OuterSteps < OuterStepsMax; OuterSteps++)
         {
-            for (var j = 0; j < _linear.Length; j++)
-                _linear[j] = _cost[j] - (_proximal[j] * _centre[j]);
             var status = SolveStep();
-            if (status != DualActiveSetStatus.Optimal)
+            if (status != DualActiveSetStatus.Optimal || StationarityPerMwh <= StationaryShare * _stationaryScale)
                 return status;
-            StationarityPerMwh = 0;
-            for (var j = 0; j < _x.Length; j++)
-                StationarityPerMwh = Math.Max(StationarityPerMwh, _proximal[j] * Math.Abs(_x[j] - _centre[j]));
-            if (StationarityPerMwh <= StationaryShare * _priceScale)
-            {
-                SetPrices();
-                return DualActiveSetStatus.Optimal;
-            }
-
             MoveCentre();
         }
 
-        return DualActiveSetStatus.StepLimit;
+        var last = SolveStep();
+        return last == DualActiveSetStatus.Optimal && StationarityPerMwh > AcceptableShare * _stationaryScale
+            ? DualActiveSetStatus.StepLimit
+            : last;
     }
 
-    /// <summary>A head start that rounding has spoilt is not worth keeping: the same program is solved again without.</summary>
+    /// <summary>One proximal step. A head start that rounding has spoilt is not worth keeping; then it is solved without.</summary>
     private DualActiveSetStatus SolveStep()
     {
+        for (var j = 0; j < _linear.Length; j++)
+            _linear[j] = _cost[j] - (_proximal[j] * _centre[j]);
         var status = _solver.Solve(_linear, _lower, _upper, _x, _multipliers);
-        if (status != DualActiveSetStatus.StepLimit)
-            return status;
-        _solver.Forget();
-        return _solver.Solve(_linear, _lower, _upper, _x, _multipliers);
+        if (status == DualActiveSetStatus.StepLimit)
+        {
+            _solver.Forget();
+            status = _solver.Solve(_linear, _lower, _upper, _x, _multipliers);
+        }
+
+        StationarityPerMwh = 0;
+        for (var j = 0; j < _x.Length; j++)
+            StationarityPerMwh = Math.Max(StationarityPerMwh, _proximal[j] * Math.Abs(_x[j] - _centre[j]));
+        SetPrices();
+        return status;
     }
 
     private void SetCurvature(double largestSusceptance)

@@ -38,12 +38,7 @@ public sealed class NodalAngleProblem
     private readonly SupplyCurve _supply;
     private readonly double _unservedPrice;
     private readonly double _ownWeight;
-    private readonly double[] _weight;
-    private readonly double[] _susceptance;
-    private readonly double[] _limitRad;
-    private readonly double[] _susceptanceOverWeight;
-    private readonly double[] _centreRad;
-    private readonly int[] _side;
+    private readonly Neighbour[] _neighbours;
 
     /// <summary>Sets up the problem; everything here stays constant from round to round.</summary>
     /// <param name="supply">The generators of the bus.</param>
@@ -69,20 +64,17 @@ public sealed class NodalAngleProblem
         _supply = supply;
         _unservedPrice = unservedPricePerMwh;
         _ownWeight = copyWeights[0];
-        _weight = copyWeights[1..].ToArray();
-        var count = _weight.Length;
-        _susceptance = new double[count];
-        _limitRad = new double[count];
-        Array.Fill(_limitRad, double.PositiveInfinity);
+        _neighbours = new Neighbour[copyWeights.Length - 1];
+        for (var c = 0; c < _neighbours.Length; c++)
+            _neighbours[c] = new Neighbour { Weight = copyWeights[c + 1], LimitRad = double.PositiveInfinity };
         foreach (var line in lines)
             Fold(line);
-        _susceptanceOverWeight = _susceptance.Zip(_weight, (susceptance, weight) => susceptance / weight).ToArray();
-        _centreRad = new double[count];
-        _side = new int[count];
+        foreach (ref var neighbour in _neighbours.AsSpan())
+            neighbour.SusceptanceOverWeight = neighbour.Susceptance / neighbour.Weight;
     }
 
     /// <summary>Number of angles in and out: the site's own and one per neighbour.</summary>
-    public int CopyCount => _weight.Length + 1;
+    public int CopyCount => _neighbours.Length + 1;
 
     /// <summary>Solves for one load and one set of anchors.</summary>
     /// <param name="loadMw">MW; may be negative.</param>
@@ -93,22 +85,25 @@ public sealed class NodalAngleProblem
     public NodalAngleSolution Solve(double loadMw, ReadOnlySpan<double> anchorRad, Span<double> copiesRad)
     {
         Check(loadMw, anchorRad, copiesRad);
-        var anchors = anchorRad[1..];
-        double low = -_unservedPrice, high = _unservedPrice;
-        Array.Clear(_side);
-        var located = double.NaN;
-        var price = 0.0;
+        var ownAnchor = anchorRad[0];
+        for (var c = 0; c < _neighbours.Length; c++)
+        {
+            _neighbours[c].AnchorRad = anchorRad[c + 1];
+            _neighbours[c].Side = 0;
+        }
+
+        double low = -_unservedPrice, high = _unservedPrice, located = double.NaN, price = 0;
         for (var hop = 0; hop < HopsMax; hop++)
         {
-            var piece = DescribePiece(anchorRad[0], anchors);
+            var piece = DescribePiece(ownAnchor);
             price = Math.Clamp(
                 _supply.CrossingPrice(loadMw + piece.OutflowAtZeroMw, piece.OutflowSlope), -_unservedPrice, _unservedPrice);
-            if (Holds(piece, price, anchors))
+            if (Holds(piece, price))
                 break;
             if (hop > 0)
             {
                 var direction = Math.Sign(price - located);
-                var edge = EdgeOf(piece, located, direction, anchors);
+                var edge = EdgeOf(piece, located, direction);
                 if (!(direction * (price - edge) > 0))
                     break;
                 if (direction > 0)
@@ -123,30 +118,30 @@ public sealed class NodalAngleProblem
             }
 
             located = hop % 4 != 3 && price > low && price < high ? price : low + (0.5 * (high - low));
-            Locate(anchorRad[0], anchors, located);
+            Locate(ownAnchor, located);
         }
 
-        return Finish(loadMw, price, anchorRad[0], anchors, copiesRad);
+        return Finish(loadMw, price, ownAnchor, copiesRad);
     }
 
     /// <summary>Equations (2) and (3) for the sides now noted.</summary>
-    private Piece DescribePiece(double ownAnchor, ReadOnlySpan<double> anchors)
+    private Piece DescribePiece(double ownAnchor)
     {
         double weight = _ownWeight, moment = _ownWeight * ownAnchor, free = 0, slope = 0, outflow = 0;
-        for (var c = 0; c < anchors.Length; c++)
+        foreach (ref readonly var neighbour in _neighbours.AsSpan())
         {
-            if (_side[c] == 0)
+            if (neighbour.Side == 0)
             {
-                free += _susceptance[c];
-                slope -= _susceptance[c] * _susceptanceOverWeight[c];
-                outflow -= _susceptance[c] * anchors[c];
+                free += neighbour.Susceptance;
+                slope -= neighbour.Susceptance * neighbour.SusceptanceOverWeight;
+                outflow -= neighbour.Susceptance * neighbour.AnchorRad;
             }
             else
             {
-                var limit = _side[c] * _limitRad[c];
-                weight += _weight[c];
-                moment += _weight[c] * (anchors[c] + limit);
-                outflow += _susceptance[c] * limit;
+                var limit = neighbour.Side * neighbour.LimitRad;
+                weight += neighbour.Weight;
+                moment += neighbour.Weight * (neighbour.AnchorRad + limit);
+                outflow += neighbour.Susceptance * limit;
             }
         }
 
@@ -156,18 +151,17 @@ public sealed class NodalAngleProblem
     }
 
     /// <summary>Whether the noted sides are the right ones at a price, to rounding.</summary>
-    private bool Holds(in Piece piece, double price, ReadOnlySpan<double> anchors)
+    private bool Holds(in Piece piece, double price)
     {
         var angle = piece.AngleAtZeroRad + (price * piece.AngleSlope);
-        for (var c = 0; c < anchors.Length; c++)
+        foreach (ref readonly var neighbour in _neighbours.AsSpan())
         {
-            var push = price * _susceptanceOverWeight[c];
-            var difference = angle - anchors[c] - push;
-            var limit = _limitRad[c];
-            var slack = Rounding * (Math.Abs(angle) + Math.Abs(anchors[c]) + Math.Abs(push));
-            var right = _side[c] == 0
-                ? Math.Abs(difference) <= limit + slack
-                : _side[c] * difference >= limit - slack;
+            var push = price * neighbour.SusceptanceOverWeight;
+            var difference = angle - neighbour.AnchorRad - push;
+            var slack = Rounding * (Math.Abs(angle) + Math.Abs(neighbour.AnchorRad) + Math.Abs(push));
+            var right = neighbour.Side == 0
+                ? Math.Abs(difference) <= neighbour.LimitRad + slack
+                : neighbour.Side * difference >= neighbour.LimitRad - slack;
             if (!right)
                 return false;
         }
@@ -176,17 +170,18 @@ public sealed class NodalAngleProblem
     }
 
     /// <summary>The price at which, going from <paramref name="price"/> in a direction, the first difference changes side.</summary>
-    private double EdgeOf(in Piece piece, double price, int direction, ReadOnlySpan<double> anchors)
+    private double EdgeOf(in Piece piece, double price, int direction)
     {
         var nearest = double.PositiveInfinity;
         var angle = piece.AngleAtZeroRad + (price * piece.AngleSlope);
-        for (var c = 0; c < anchors.Length; c++)
+        foreach (ref readonly var neighbour in _neighbours.AsSpan())
         {
-            var difference = angle - anchors[c] - (price * _susceptanceOverWeight[c]);
-            var slope = direction * (piece.AngleSlope - _susceptanceOverWeight[c]);
-            var ahead = _side[c] == 0 ? Math.Sign(slope) : -Math.Sign(slope) == _side[c] ? _side[c] : 0;
+            var difference = angle - neighbour.AnchorRad - (price * neighbour.SusceptanceOverWeight);
+            var slope = direction * (piece.AngleSlope - neighbour.SusceptanceOverWeight);
+            var heading = Math.Sign(slope);
+            var ahead = neighbour.Side == 0 ? heading : -heading == neighbour.Side ? neighbour.Side : 0;
             if (ahead != 0)
-                nearest = Math.Min(nearest, Math.Max(0, ((ahead * _limitRad[c]) - difference) / slope));
+                nearest = Math.Min(nearest, Math.Max(0, ((ahead * neighbour.LimitRad) - difference) / slope));
         }
 
         return price + (direction * nearest);
@@ -197,58 +192,65 @@ public sealed class NodalAngleProblem
     /// kinks at a_c + ν·B_c/w_c ± D_c; a kink inside the bracket is tried and becomes one of its ends, so that no kink
     /// is left inside when all have been seen.
     /// </summary>
-    private void Locate(double ownAnchor, ReadOnlySpan<double> anchors, double price)
+    private void Locate(double ownAnchor, double price)
     {
-        for (var c = 0; c < anchors.Length; c++)
-            _centreRad[c] = anchors[c] + (price * _susceptanceOverWeight[c]);
-        double low = double.NegativeInfinity, high = double.PositiveInfinity;
-        for (var c = 0; c < anchors.Length; c++)
+        var neighbours = _neighbours.AsSpan();
+        foreach (ref var neighbour in neighbours)
         {
-            for (var side = -1; side <= 1; side += 2)
-            {
-                var kink = _centreRad[c] + (side * _limitRad[c]);
-                if (!(kink > low && kink < high))
-                    continue;
-                if (Moment(ownAnchor, anchors, kink) < 0)
-                    low = kink;
-                else
-                    high = kink;
-            }
+            var centre = neighbour.AnchorRad + (price * neighbour.SusceptanceOverWeight);
+            (neighbour.LowKinkRad, neighbour.HighKinkRad) = (centre - neighbour.LimitRad, centre + neighbour.LimitRad);
         }
 
-        for (var c = 0; c < anchors.Length; c++)
-            _side[c] = low >= _centreRad[c] + _limitRad[c] ? 1 : high <= _centreRad[c] - _limitRad[c] ? -1 : 0;
+        double low = double.NegativeInfinity, high = double.PositiveInfinity;
+        foreach (ref readonly var neighbour in neighbours)
+        {
+            Try(neighbour.LowKinkRad, ownAnchor, price, ref low, ref high);
+            Try(neighbour.HighKinkRad, ownAnchor, price, ref low, ref high);
+        }
+
+        foreach (ref var neighbour in neighbours)
+            neighbour.Side = low >= neighbour.HighKinkRad ? 1 : high <= neighbour.LowKinkRad ? -1 : 0;
     }
 
-    /// <summary>Left-hand side of the second equation of (1).</summary>
-    private double Moment(double ownAnchor, ReadOnlySpan<double> anchors, double angle)
+    private void Try(double kink, double ownAnchor, double price, ref double low, ref double high)
+    {
+        if (!(kink > low && kink < high))
+            return;
+        if (Moment(ownAnchor, price, kink) < 0)
+            low = kink;
+        else
+            high = kink;
+    }
+
+    /// <summary>Left-hand side of the second equation of (1): a free neighbour pulls with ν·B_c whatever the angle.</summary>
+    private double Moment(double ownAnchor, double price, double angle)
     {
         var moment = _ownWeight * (angle - ownAnchor);
-        for (var c = 0; c < anchors.Length; c++)
+        foreach (ref readonly var neighbour in _neighbours.AsSpan())
         {
-            var limit = _limitRad[c];
-            var difference = Math.Min(limit, Math.Max(-limit, angle - _centreRad[c]));
-            moment += _weight[c] * (angle - difference - anchors[c]);
+            var pull = angle > neighbour.HighKinkRad ? angle - neighbour.HighKinkRad
+                : angle < neighbour.LowKinkRad ? angle - neighbour.LowKinkRad : 0;
+            moment += (price * neighbour.Susceptance) + (neighbour.Weight * pull);
         }
 
         return moment;
     }
 
-    private NodalAngleSolution Finish(
-        double loadMw, double price, double ownAnchor, ReadOnlySpan<double> anchors, Span<double> copiesRad)
+    private NodalAngleSolution Finish(double loadMw, double price, double ownAnchor, Span<double> copiesRad)
     {
-        var piece = DescribePiece(ownAnchor, anchors);
+        var piece = DescribePiece(ownAnchor);
         var angle = piece.AngleAtZeroRad + (price * piece.AngleSlope);
         copiesRad[0] = angle;
         var needMw = loadMw;
-        for (var c = 0; c < anchors.Length; c++)
+        for (var c = 0; c < _neighbours.Length; c++)
         {
-            var limit = _limitRad[c];
-            var difference = _side[c] == 0
-                ? Math.Min(limit, Math.Max(-limit, angle - anchors[c] - (price * _susceptanceOverWeight[c])))
-                : _side[c] * limit;
+            ref readonly var neighbour = ref _neighbours[c];
+            var limit = neighbour.LimitRad;
+            var difference = neighbour.Side == 0
+                ? Math.Min(limit, Math.Max(-limit, angle - neighbour.AnchorRad - (price * neighbour.SusceptanceOverWeight)))
+                : neighbour.Side * limit;
             copiesRad[c + 1] = angle - difference;
-            needMw += _susceptance[c] * difference;
+            needMw += neighbour.Susceptance * difference;
         }
 
         if (Math.Abs(price) < _unservedPrice)
@@ -260,15 +262,15 @@ public sealed class NodalAngleProblem
 
     private void Fold(NodalLine line)
     {
-        if (line.Copy < 1 || line.Copy > _weight.Length)
-            throw new ArgumentException($"A line names copy {line.Copy}; neighbours are copies 1 to {_weight.Length}.");
+        if (line.Copy < 1 || line.Copy > _neighbours.Length)
+            throw new ArgumentException($"A line names copy {line.Copy}; neighbours are copies 1 to {_neighbours.Length}.");
         if (!double.IsFinite(line.SusceptanceMwPerRad) || line.SusceptanceMwPerRad == 0)
             throw new ArgumentException("A line needs a finite susceptance other than 0.");
         if (!(line.LimitMw >= 0))
             throw new ArgumentException("A line's limit must be 0 MW or more, or positive infinity.");
-        var c = line.Copy - 1;
-        _susceptance[c] += line.SusceptanceMwPerRad;
-        _limitRad[c] = Math.Min(_limitRad[c], line.LimitMw / Math.Abs(line.SusceptanceMwPerRad));
+        ref var neighbour = ref _neighbours[line.Copy - 1];
+        neighbour.Susceptance += line.SusceptanceMwPerRad;
+        neighbour.LimitRad = Math.Min(neighbour.LimitRad, line.LimitMw / Math.Abs(line.SusceptanceMwPerRad));
     }
 
     private void Check(double loadMw, ReadOnlySpan<double> anchorRad, Span<double> copiesRad)
@@ -286,4 +288,19 @@ public sealed class NodalAngleProblem
 
     /// <summary>One affine piece: θ_0 and outflow at price 0, with their slopes per $/MWh.</summary>
     private readonly record struct Piece(double AngleAtZeroRad, double AngleSlope, double OutflowAtZeroMw, double OutflowSlope);
+
+    /// <summary>All lines to one neighbour, with the state of the solve under way: B_c (MW/rad), w_c, D_c and the rest.</summary>
+    private struct Neighbour
+    {
+        public double Weight;
+        public double Susceptance;
+        public double SusceptanceOverWeight;
+        public double LimitRad;
+        public double AnchorRad;
+        public double LowKinkRad;
+        public double HighKinkRad;
+
+        /// <summary>−1 or 1 at that limit, 0 within.</summary>
+        public int Side;
+    }
 }
