@@ -55,7 +55,7 @@ internal sealed class DcFlow
     }
 
     /// <summary>Flow on each line, MW, positive from its first bus to its second, for injections that sum to zero.</summary>
-    public double[] Flows(ReadOnlySpan<double> injectionMw, double tolerance = 1e-9)
+    public double[] Flows(ReadOnlySpan<double> injectionMw, double tolerance = 1e-7)
     {
         var angle = Angles(injectionMw, tolerance);
         var flows = new double[_susceptance.Length];
@@ -65,7 +65,7 @@ internal sealed class DcFlow
     }
 
     /// <summary>Change of one line's flow per MW injected at each bus and taken out wherever; only differences mean anything.</summary>
-    public double[] Sensitivity(int line, double tolerance = 1e-4)
+    public double[] Sensitivity(int line, double tolerance = 1e-3)
     {
         var pair = new double[_buses];
         pair[_network.Lines[line].FromBus] = _susceptance[line];

@@ -17,6 +17,9 @@ internal sealed class InventedLimits
     private const double LeastLimitMw = 25;
     private const int MostSwaps = 24;
 
+    // Each congested line takes a solve; beyond this many a larger network would only take longer to make.
+    private const int MostCongested = 80;
+
     private readonly Network _network;
     private readonly DcFlow _flow;
     private readonly double[][] _loadMw;
@@ -39,7 +42,7 @@ internal sealed class InventedLimits
     private double[]? Choose(SeededNumbers numbers)
     {
         var lines = _network.Lines.Count;
-        var congested = Congest(Math.Max(1, (int)Math.Round(0.03 * lines)), numbers);
+        var congested = Congest(Math.Clamp((int)Math.Round(0.03 * lines), 1, MostCongested), numbers);
         var shiftedFlow = Array.ConvertAll(_loadMw, load => FlowsOf(Follow(load), load));
         var limits = new double[lines];
         var binding = 0;
@@ -71,7 +74,7 @@ internal sealed class InventedLimits
         var heavy = byFlow[..Math.Max(1, (2 * byFlow.Length) / 5)];
         numbers.Shuffle(heavy);
         var congested = new HashSet<int>();
-        foreach (var line in heavy.Concat(byFlow.Except(heavy)).Take(4 * count + 20))
+        foreach (var line in heavy.Concat(byFlow.Except(heavy)).Take((2 * count) + 40))
         {
             if (congested.Count == count)
                 break;
