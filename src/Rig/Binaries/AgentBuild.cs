@@ -1,16 +1,9 @@
-using System.Diagnostics;
-using Halfvoice.Rig.Processes;
-
 namespace Halfvoice.Rig.Binaries;
 
 /// <summary>Builds agent and coordinator from a source checkout, unless a build of exactly this source is there already.</summary>
 internal sealed class AgentBuild(SourceCheckout checkout, BinaryOptions options, Action<string> progress)
 {
-    private static readonly TimeSpan _tellEvery = TimeSpan.FromSeconds(5);
-
-    // Set by a dotnet command that we may run under, and meant for it alone.
-    private static readonly string[] _inherited =
-        ["MSBuildSDKsPath", "MSBuildExtensionsPath", "MSBUILD_EXE_PATH", "MSBuildLoadMicrosoftTargetsReadOnly", "MSBUILDUSESERVER"];
+    private readonly DotnetPublish _publish = new(options.SearchPath, options.BuildWithin, progress);
 
     /// <summary>Builds ahead of time where that is possible; otherwise, or when it fails, for the JIT.</summary>
     /// <exception cref="BinariesException">Neither build succeeded.</exception>
@@ -52,7 +45,10 @@ internal sealed class AgentBuild(SourceCheckout checkout, BinaryOptions options,
         File.Delete(stampPath);
         foreach (var project in new[] { "Agent", "Coordinator" })
         {
-            if (await PublishAsync(project, flavour, folder, cancel).ConfigureAwait(false) is { } failure)
+            var failure = await _publish.RunAsync(
+                Path.Combine(checkout.Folder, "src", project), folder, flavour.Arguments,
+                $"Building {project.ToLowerInvariant()} {flavour.How}", cancel).ConfigureAwait(false);
+            if (failure is not null)
                 return (null, failure);
         }
 
@@ -68,76 +64,6 @@ internal sealed class AgentBuild(SourceCheckout checkout, BinaryOptions options,
         var agent = Path.Combine(folder, "publish", "Agent", flavour.Output, AgentBinaries.FileNameOf(AgentBinaries.AgentName));
         var coordinator = Path.Combine(folder, "publish", "Coordinator", flavour.Output, AgentBinaries.FileNameOf(AgentBinaries.CoordinatorName));
         return File.Exists(agent) && File.Exists(coordinator) ? AgentBinaries.Of(agent, coordinator, reason) : null;
-    }
-
-    /// <returns>What went wrong, or null.</returns>
-    private async Task<string?> PublishAsync(string project, Flavour flavour, string folder, CancellationToken cancel)
-    {
-        var dotnet = Environment.GetEnvironmentVariable("DOTNET_HOST_PATH") ?? Toolchain.FindCommand("dotnet", options.SearchPath);
-        if (dotnet is null)
-            return "the dotnet command was not found. Install the .NET SDK that global.json names.";
-        var logPath = Path.Combine(folder, $"{project}.build.log");
-        var output = new List<string>();
-        // No build server may stay behind: the rig leaves no process when it ends.
-        var child = ChildProcess.Start(new ChildStart(
-            $"build of {project}",
-            dotnet,
-            ["publish", Path.Combine(checkout.Folder, "src", project), "-c", "Release", "--artifacts-path", folder, .. flavour.Arguments,
-                "--nologo", "-nodeReuse:false", "-p:UseSharedCompilation=false", "-p:RunAnalyzers=false"])
-        {
-            WorkingFolder = checkout.Folder,
-            Environment = BuildEnvironment(),
-            ErrorLogPath = Path.Combine(folder, $"{project}.build.errors.log"),
-            OnLine = output.Add,
-        });
-        var failure = await WaitAsync(child, $"Building {project.ToLowerInvariant()} {flavour.How}", cancel).ConfigureAwait(false);
-        await File.WriteAllLinesAsync(logPath, output, cancel).ConfigureAwait(false);
-        if (failure is not null)
-            return failure;
-        var exit = await child.Exited.ConfigureAwait(false);
-        if (exit.ExitCode == 0)
-            return null;
-        var firstError = output.Concat(exit.LastErrorLines).FirstOrDefault(line => line.Contains("error", StringComparison.OrdinalIgnoreCase));
-        return $"{firstError?.Trim() ?? $"dotnet publish ended with exit code {exit.ExitCode}"} (all of it is in '{logPath}')";
-    }
-
-    private Dictionary<string, string?> BuildEnvironment()
-    {
-        var variables = _inherited.ToDictionary(name => name, _ => (string?)null);
-        variables["PATH"] = options.SearchPath;
-        variables["DOTNET_NOLOGO"] = "1";
-        variables["DOTNET_CLI_TELEMETRY_OPTOUT"] = "1";
-        variables["DOTNET_CLI_UI_LANGUAGE"] = "en";
-        variables["MSBUILDTERMINALLOGGER"] = "off";
-        variables["MSBUILDDISABLENODEREUSE"] = "1";
-        variables["DOTNET_CLI_USE_MSBUILD_SERVER"] = "0";
-        return variables;
-    }
-
-    /// <summary>Waits for a build and tells every few seconds that it still runs; ends it when it takes too long.</summary>
-    private async Task<string?> WaitAsync(ChildProcess child, string what, CancellationToken cancel)
-    {
-        var clock = Stopwatch.StartNew();
-        progress($"{what} ...");
-        try
-        {
-            while (await Task.WhenAny(child.Exited, Task.Delay(_tellEvery, cancel)).ConfigureAwait(false) != child.Exited)
-            {
-                cancel.ThrowIfCancellationRequested();
-                progress($"{what} ... {clock.Elapsed.TotalSeconds:0} s");
-                if (clock.Elapsed > options.BuildWithin)
-                    return $"it took more than {options.BuildWithin.TotalMinutes:0} minutes.";
-            }
-
-            progress($"{what}: {clock.Elapsed.TotalSeconds:0} s");
-            return null;
-        }
-        finally
-        {
-            if (!child.Exited.IsCompleted)
-                child.KillTree();
-            await child.Exited.ConfigureAwait(false);
-        }
     }
 
     /// <summary>One of the two ways to build.</summary>

@@ -3,7 +3,7 @@ using System.Runtime.InteropServices;
 namespace Halfvoice.Rig.Binaries;
 
 /// <summary>What this machine can compile ahead of time with.</summary>
-internal static class Toolchain
+public static class Toolchain
 {
     private static readonly string[] _supported =
         ["linux-x64", "linux-arm64", "linux-musl-x64", "linux-musl-arm64", "osx-x64", "osx-arm64"];
