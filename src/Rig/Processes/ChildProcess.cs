@@ -133,6 +133,20 @@ public sealed class ChildProcess : IAsyncDisposable
         Signals.Kill(_process);
     }
 
+    /// <summary>Ends the process and all that it started, for commands that have helpers of their own.</summary>
+    internal void KillTree()
+    {
+        ExpectExitFromNowOn();
+        try
+        {
+            _process.Kill(entireProcessTree: true);
+        }
+        catch (Exception gone) when (gone is InvalidOperationException or System.ComponentModel.Win32Exception or AggregateException)
+        {
+            // Some of them ended between our look and our signal.
+        }
+    }
+
     /// <summary>
     /// Resumes the process if it is paused, asks it to stop (SIGTERM; where there is none, by cutting its lifeline), and kills it
     /// when it is still there after <paramref name="grace"/>. Never throws, also when it is already gone.

@@ -1,0 +1,195 @@
+using System.Diagnostics;
+using System.Globalization;
+using System.Text.Json;
+using Halfvoice.Rig.Authority;
+using Halfvoice.Rig.Binaries;
+using Halfvoice.Rig.Processes;
+
+namespace Halfvoice.Benchmarks;
+
+/// <summary>What a bare gRPC exchange does on this machine.</summary>
+/// <param name="Clients">Client processes.</param>
+/// <param name="Rounds">Rounds measured, after a warm-up.</param>
+/// <param name="RoundsPerSecond">The yardstick.</param>
+/// <param name="MedianMs">Median time of a round, milliseconds.</param>
+/// <param name="P99Ms">99th percentile of a round, milliseconds.</param>
+/// <param name="ConnectSeconds">From the first client's start until all have their streams open.</param>
+/// <param name="ClientResidentMb">Mean resident memory of a client after the rounds, MB; NaN where it cannot be read.</param>
+public sealed record BareExchangeResult(
+    int Clients, int Rounds, double RoundsPerSecond, double MedianMs, double P99Ms, double ConnectSeconds, double ClientResidentMb);
+
+/// <summary>
+/// The exchange's yardstick: a gRPC program with the product's payload, processes and mutual TLS, and nothing behind them, asks
+/// N client processes round after round. The product's own exchange is held against it (design §11: 0.8 or more).
+/// </summary>
+public static class ExchangeBenchmark
+{
+    /// <summary>Least share of the bare exchange's speed that the product's must reach.</summary>
+    public const double LeastRatio = 0.8;
+
+    private static readonly TimeSpan _patience = TimeSpan.FromMinutes(5);
+
+    /// <summary>
+    /// Measures the bare exchange and prints it. Arguments: <c>--clients 12,118</c>, <c>--rounds 1000</c>, <c>--components 1</c>,
+    /// <c>--jit</c>.
+    /// </summary>
+    /// <returns>0, or 64 for arguments that make no sense.</returns>
+    public static int Run(string[] args)
+    {
+        ArgumentNullException.ThrowIfNull(args);
+        if (!TryRead(args, out var clients, out var rounds, out var components, out var jit))
+        {
+            Console.Error.WriteLine("exchange [--clients 12,118] [--rounds 1000] [--components 1] [--jit]");
+            return 64;
+        }
+
+        foreach (var count in clients)
+        {
+            var result = MeasureBareAsync(count, rounds, components, jit).GetAwaiter().GetResult();
+            Console.WriteLine(string.Create(
+                CultureInfo.InvariantCulture,
+                $"bare exchange, {count} client processes: {result.RoundsPerSecond:0} rounds/s (median {result.MedianMs:0.00} ms, p99 {result.P99Ms:0.00} ms), " +
+                $"all connected after {result.ConnectSeconds:0.00} s, {result.ClientResidentMb:0.0} MB resident each"));
+        }
+
+        return 0;
+    }
+
+    /// <summary>Starts the bare program once as server and <paramref name="clients"/> times as client, and measures.</summary>
+    /// <param name="clients">1 to 1,000 processes.</param>
+    /// <param name="rounds">Rounds to measure; a tenth as many come before as warm-up.</param>
+    /// <param name="components">Numbers in an answer: buses of a site.</param>
+    /// <param name="jit">Uses the JIT build also where an ahead-of-time build could be made; the product must be built likewise.</param>
+    /// <param name="cancel">Ends the measurement.</param>
+    public static async Task<BareExchangeResult> MeasureBareAsync(
+        int clients, int rounds, int components = 1, bool jit = false, CancellationToken cancel = default)
+    {
+        var executable = await PublishAsync(jit, cancel).ConfigureAwait(false);
+        var folder = Directory.CreateTempSubdirectory("halfvoice-bare-").FullName;
+        try
+        {
+            WriteIdentities(folder, clients);
+            await using var fleet = new ProcessFleet(cancel: cancel);
+            var (server, ready) = await fleet.StartReadyAsync(
+                Start("server", executable, ["server", $"{clients}", $"{rounds}", $"{(rounds / 10) + 1}", $"{components}", folder]),
+                IsReady, _patience, cancel).ConfigureAwait(false);
+            var port = Number(ready, "port");
+
+            var clock = Stopwatch.StartNew();
+            var starts = Enumerable.Range(0, clients)
+                .Select(number => Start($"client {number}", executable, ["client", $"{port}", folder, $"site-{number}"])).ToList();
+            var children = await fleet.StartAllAsync(starts, IsReady, _patience, cancel: cancel).ConfigureAwait(false);
+            await server.WaitForLineAsync(line => line.Contains("\"connected\"", StringComparison.Ordinal), _patience, cancel).ConfigureAwait(false);
+            var connectSeconds = clock.Elapsed.TotalSeconds;
+            var done = await server.WaitForLineAsync(line => line.Contains("\"rounds\"", StringComparison.Ordinal), _patience, cancel).ConfigureAwait(false);
+
+            var residentMb = children.Average(child => ResidentMb(child.ProcessId));
+            return new BareExchangeResult(
+                clients, rounds, rounds / Number(done, "seconds"), Number(done, "median_ms"), Number(done, "p99_ms"), connectSeconds, residentMb);
+        }
+        finally
+        {
+            Directory.Delete(folder, recursive: true);
+        }
+    }
+
+    /// <summary>Holds the product's exchange against the bare one and prints the ratio.</summary>
+    /// <param name="bare">Measured in the same run on the same machine, with as many processes.</param>
+    /// <param name="realRoundsPerSecond">The product's rounds a second with coordinator, agents and ledger.</param>
+    /// <returns>True when the ratio is at least <see cref="LeastRatio"/>.</returns>
+    public static bool Compare(BareExchangeResult bare, double realRoundsPerSecond)
+    {
+        ArgumentNullException.ThrowIfNull(bare);
+        ArgumentOutOfRangeException.ThrowIfNegativeOrZero(realRoundsPerSecond);
+        var ratio = realRoundsPerSecond / bare.RoundsPerSecond;
+        var passed = ratio >= LeastRatio;
+        Console.WriteLine(string.Create(
+            CultureInfo.InvariantCulture,
+            $"exchange, {bare.Clients} agent processes: {realRoundsPerSecond:0} rounds/s, {ratio:0.00} of the bare exchange " +
+            $"(at least {LeastRatio:0.0}): {(passed ? "reached" : "MISSED")}"));
+        return passed;
+    }
+
+    /// <summary>Resident memory of a process, MB; NaN where the system does not say.</summary>
+    public static double ResidentMb(int processId)
+    {
+        var path = $"/proc/{processId}/status";
+        if (!File.Exists(path))
+            return double.NaN;
+        var line = File.ReadLines(path).First(line => line.StartsWith("VmRSS:", StringComparison.Ordinal));
+        return double.Parse(line.Split(' ', StringSplitOptions.RemoveEmptyEntries)[1], CultureInfo.InvariantCulture) / 1024;
+    }
+
+    private static async Task<string> PublishAsync(bool jit, CancellationToken cancel)
+    {
+        var options = new BinaryOptions();
+        var top = new DirectoryInfo(AppContext.BaseDirectory);
+        while (!File.Exists(Path.Combine(top.FullName, "Agents.sln")))
+            top = top.Parent ?? throw new InvalidOperationException("The benchmarks run from a source checkout only.");
+        var isNative = !jit && Toolchain.WhyNotNative(options.SearchPath) is null;
+        var artifacts = Path.Combine(top.FullName, "artifacts", isNative ? "bare" : "bare-jit");
+        Directory.CreateDirectory(artifacts);
+        string[] arguments = isNative ? ["-r", Toolchain.RuntimeIdentifier] : ["-p:PublishAot=false", "--self-contained", "false"];
+        var failure = await new DotnetPublish(options.SearchPath, options.BuildWithin, Console.Error.WriteLine).RunAsync(
+            Path.Combine(top.FullName, "tests", "Benchmarks", "BareExchange"), artifacts, arguments,
+            $"Building the bare exchange {(isNative ? "ahead of time" : "for the JIT")}", cancel).ConfigureAwait(false);
+        if (failure is not null)
+            throw new InvalidOperationException($"The bare exchange cannot be built: {failure}");
+        var output = isNative ? $"release_{Toolchain.RuntimeIdentifier}" : "release";
+        return Path.Combine(artifacts, "publish", "BareExchange", output, OperatingSystem.IsWindows() ? "bare-exchange.exe" : "bare-exchange");
+    }
+
+    private static void WriteIdentities(string folder, int clients)
+    {
+        using var authority = LabAuthority.Create(TimeSpan.FromDays(1), TimeProvider.System);
+        authority.WriteCertificate(Path.Combine(folder, "authority.pem"));
+        authority.WriteRevocationList(Path.Combine(folder, "revoked.crl"));
+        using var coordinator = authority.Issue(new IdentityRequest(IdentityRole.Coordinator) { DnsNames = ["localhost"] });
+        coordinator.Write(folder, "coordinator");
+        for (var number = 0; number < clients; number++)
+        {
+            using var site = authority.Issue(new IdentityRequest(IdentityRole.Site, $"site-{number}"));
+            site.Write(folder, $"site-{number}");
+        }
+    }
+
+    private static ChildStart Start(string name, string executable, string[] arguments) => new(name, executable, arguments)
+    {
+        Environment = new Dictionary<string, string?> { ["DOTNET_TieredCompilation"] = "0" },
+    };
+
+    private static bool IsReady(string line) => line.StartsWith("{\"ready\":true", StringComparison.Ordinal);
+
+    private static double Number(string json, string name)
+    {
+        using var document = JsonDocument.Parse(json);
+        return document.RootElement.GetProperty(name).GetDouble();
+    }
+
+    private static bool TryRead(string[] args, out int[] clients, out int rounds, out int components, out bool jit)
+    {
+        (clients, rounds, components, jit) = ([12, 118], 1000, 1, false);
+        for (var i = 0; i < args.Length; i++)
+        {
+            var value = i + 1 < args.Length ? args[i + 1] : "";
+            switch (args[i])
+            {
+                case "--jit":
+                    jit = true;
+                    continue;
+                case "--clients":
+                    clients = [.. value.Split(',').Select(part => int.TryParse(part, CultureInfo.InvariantCulture, out var count) ? count : 0)];
+                    break;
+                case "--rounds" when int.TryParse(value, CultureInfo.InvariantCulture, out rounds):
+                case "--components" when int.TryParse(value, CultureInfo.InvariantCulture, out components):
+                    break;
+                default:
+                    return false;
+            }
+
+            i++;
+        }
+
+        return clients.All(count => count is >= 1 and <= 1000) && rounds >= 1 && components is >= 1 and <= 10_000;
+    }
+}
