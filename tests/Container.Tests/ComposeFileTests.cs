@@ -19,6 +19,9 @@ public sealed partial class ComposeFileTests
         Assert.All(agents, m => Assert.Equal(m.Groups["service"].Value, m.Groups["state"].Value));
     }
 
-    [GeneratedRegex(@"^  (?<service>[a-z0-9-]+):\n    <<: \*agent\n    volumes:\n.*source: \./deploy/lab/sites/(?<bundle>[a-z0-9-]+), .*\n.*source: (?<state>[a-z0-9-]+), ", RegexOptions.Multiline)]
+    [GeneratedRegex(
+        @"^  (?<service>[a-z0-9-]+):\n    <<: \*agent\n    volumes:\n" +
+        @".*source: \./deploy/lab/sites/(?<bundle>[a-z0-9-]+), .*\n.*source: (?<state>[a-z0-9-]+), ",
+        RegexOptions.Multiline)]
     private static partial Regex AgentService();
 }
