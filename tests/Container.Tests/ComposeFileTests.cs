@@ -10,7 +10,8 @@ public sealed partial class ComposeFileTests
     {
         var buses = File.ReadAllLines(Repository.PathOf("deploy", "plans", "sallow-reach", "grid", "buses.csv"));
         Assert.StartsWith("bus,site", buses[0], StringComparison.Ordinal);
-        var sites = buses.Skip(1).Where(line => line.Length > 0).Select(line => line.Split(',')[1]).Distinct().Order(StringComparer.Ordinal);
+        var sites = buses.Skip(1).Where(line => line.Length > 0).Select(line => line.Split(',')[1])
+            .Distinct().Order(StringComparer.Ordinal);
 
         var agents = AgentService().Matches(File.ReadAllText(Repository.PathOf("docker-compose.yml")));
 
