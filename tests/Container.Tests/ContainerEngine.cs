@@ -47,7 +47,7 @@ public sealed class ContainerEngine : IAsyncLifetime
         // The client library assumes a newer interface than older engines speak, so it is told what this one speaks.
         SetWhereUnset("DOCKER_API_VERSION", engine.Output.Trim());
 
-        // The library's clean-up helper is an image of a public registry, which an air-gapped lab does not reach.
+        // The library cleans up by an image of a public registry, which an air-gapped lab does not reach.
         // Every test disposes of its own containers instead.
         TestcontainersSettings.ResourceReaperEnabled = false;
 

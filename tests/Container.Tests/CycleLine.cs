@@ -16,7 +16,8 @@ internal sealed record CycleLine(int Cycle, bool Settled)
             using var json = JsonDocument.Parse(line);
             if (json.RootElement.TryGetProperty("event", out var kind) && kind.GetString() == "cycle")
             {
-                cycles.Add(new CycleLine(json.RootElement.GetProperty("cycle").GetInt32(), json.RootElement.GetProperty("settled").GetBoolean()));
+                var settled = json.RootElement.GetProperty("settled").GetBoolean();
+                cycles.Add(new CycleLine(json.RootElement.GetProperty("cycle").GetInt32(), settled));
             }
         }
 

@@ -23,7 +23,10 @@ internal sealed class Lab : IAsyncDisposable
         _coordinator = Member(Lockdown.CoordinatorImage, CoordinatorName, bundles.Coordinator, bundles.Owner)
             .WithWaitStrategy(Wait.ForUnixContainer().UntilMessageIsLogged("\"event\":\"ready\""))
             .Build();
-        _agents = [.. bundles.Sites.Select(site => (site.Site, Member(Lockdown.AgentImage, site.Site, site.Folder, bundles.Owner).Build()))];
+        _agents =
+        [
+            .. bundles.Sites.Select(site => (site.Site, Member(Lockdown.AgentImage, site.Site, site.Folder, bundles.Owner).Build())),
+        ];
     }
 
     /// <summary>Starts the network, the coordinator, and once that listens all agents.</summary>

@@ -12,7 +12,11 @@ internal sealed class LabBundles : IDisposable
 
     /// <summary>Each site with its bundle, by name.</summary>
     public IReadOnlyList<(string Site, string Folder)> Sites =>
-        [.. new DirectoryInfo(Path.Combine(_folder.FullName, "sites")).GetDirectories().OrderBy(d => d.Name, StringComparer.Ordinal).Select(d => (d.Name, d.FullName))];
+        [
+            .. new DirectoryInfo(Path.Combine(_folder.FullName, "sites")).GetDirectories()
+                .OrderBy(d => d.Name, StringComparer.Ordinal)
+                .Select(d => (d.Name, d.FullName)),
+        ];
 
     /// <summary>The user ("uid:gid") who may read the bundles.</summary>
     public string Owner { get; private set; } = string.Empty;
@@ -27,7 +31,8 @@ internal sealed class LabBundles : IDisposable
         try
         {
             var rig = Path.Combine(AppContext.BaseDirectory, "halfvoice.dll");
-            var packed = await ChildCommand.RunAsync("dotnet", [rig, "pack", plan, bundles._folder.FullName, "--coordinator", coordinator], cancellation);
+            string[] command = [rig, "pack", plan, bundles._folder.FullName, "--coordinator", coordinator];
+            var packed = await ChildCommand.RunAsync("dotnet", command, cancellation);
             Assert.True(packed.ExitCode == 0, $"pack ended with exit code {packed.ExitCode}: {packed.Tail}");
             Assert.True(Directory.Exists(bundles.Coordinator), "pack left no folder coordinator/.");
             bundles.Owner = await ContainerIdentity.HandOverAsync(bundles._folder.FullName, cancellation);

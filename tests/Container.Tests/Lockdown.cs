@@ -35,7 +35,8 @@ internal static class Lockdown
     /// <summary>Mount options of a folder in memory that one user alone may enter.</summary>
     private static string OwnedBy(string user)
     {
-        var (uid, gid) = user.Split(':') is [var first, var second] ? (first, second) : throw new ArgumentException("Not of the form uid:gid.", nameof(user));
-        return $"uid={uid},gid={gid},mode=0700";
+        return user.Split(':') is [var uid, var gid]
+            ? $"uid={uid},gid={gid},mode=0700"
+            : throw new ArgumentException("Not of the form uid:gid.", nameof(user));
     }
 }
