@@ -1,1 +1,3 @@
-return 0;
+using Halfvoice.Rig.Commands;
+
+return await RigCommandLine.RunAsync(args).ConfigureAwait(false);

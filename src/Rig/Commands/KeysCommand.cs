@@ -1,0 +1,25 @@
+using System.CommandLine;
+using Halfvoice.Plans;
+using Halfvoice.Rig.Terminal;
+using Spectre.Console;
+
+namespace Halfvoice.Rig.Commands;
+
+/// <summary><c>keys</c>: every key of plan.yaml with unit, range, default and meaning.</summary>
+internal static class KeysCommand
+{
+    public static Command Create()
+    {
+        var command = new Command("keys", "List every key of plan.yaml with its unit, range, default and meaning.");
+        command.SetAction(_ =>
+        {
+            var screen = new Screen(false);
+            var table = Screen.NewTable("plan.yaml").AddColumn("key").AddColumn("unit").AddColumn("range").AddColumn("default").AddColumn("meaning");
+            foreach (var key in PlanKeys.All)
+                table.AddRow(Markup.Escape(key.Path), Markup.Escape(key.Unit), Markup.Escape(key.Range), Markup.Escape(key.Default), Markup.Escape(key.Meaning));
+            screen.Show(table);
+            return ExitCodes.Passed;
+        });
+        return command;
+    }
+}
