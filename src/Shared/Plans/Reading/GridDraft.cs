@@ -13,6 +13,9 @@ internal sealed class GridDraft
     /// <summary>Sites by name, found whatever their case; the name as first written and the line.</summary>
     public Dictionary<string, (string Name, int Line)> Sites { get; } = new(StringComparer.OrdinalIgnoreCase);
 
+    /// <summary>The file that names the buses, for messages.</summary>
+    public string BusSource { get; init; } = PlanFileRules.Buses;
+
     public List<Line> Lines { get; } = [];
 
     public List<Generator> Generators { get; } = [];

@@ -167,7 +167,7 @@ internal static class GridReader
         if (draft.BusAt.TryGetValue(name, out var found))
             return found.Index < 0 ? null : found.Index;
         if (draft.BusesAreComplete)
-            sheet.Reject(column, "must be a bus of grid/buses.csv" + NearestName.Hint(name, draft.BusAt.Keys));
+            sheet.Reject(column, $"must be a bus of {draft.BusSource}" + NearestName.Hint(name, draft.BusAt.Keys));
         return null;
     }
 }

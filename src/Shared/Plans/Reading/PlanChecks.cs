@@ -6,9 +6,12 @@ namespace Halfvoice.Plans;
 /// <summary>What must hold between the parts of a plan once each of them has been read without error.</summary>
 internal static class PlanChecks
 {
-    public static void Run(Plan plan, PlanProblems problems)
+    /// <param name="plan">The plan as read.</param>
+    /// <param name="problems">Takes what is found.</param>
+    /// <param name="linesFile">The file that the lines came from, for messages.</param>
+    public static void Run(Plan plan, PlanProblems problems, string linesFile = PlanFileRules.Lines)
     {
-        CheckIslands(plan, problems);
+        CheckIslands(plan, problems, linesFile);
         WarnOfTiming(plan, problems);
         WarnOfLoads(plan, problems);
     }
@@ -17,7 +20,7 @@ internal static class PlanChecks
     /// Each island must be able to balance. A single island whose plants are too small is left to the central optimum,
     /// which explains it in MW; here its lack of any plant is an error, and so is an island that cannot meet its load.
     /// </summary>
-    private static void CheckIslands(Plan plan, PlanProblems problems)
+    private static void CheckIslands(Plan plan, PlanProblems problems, string linesFile)
     {
         var network = plan.Network;
         var islands = Islands.Of(network);
@@ -29,15 +32,15 @@ internal static class PlanChecks
             var (least, most) = (plants.Sum(plant => plant.MinMw), plants.Sum(plant => plant.MaxMw));
             var slack = 1e-6 * (1 + Math.Abs(least) + Math.Abs(most));
             if (plants.Length == 0 && ranges[i].HasLoad)
-                problems.In(PlanFileRules.Lines).Whole(
+                problems.In(linesFile).Whole(
                     $"leaves an island with load but without a generator: buses {GridRules.BusNames(network, island)}: join it to the rest, or give it a generator");
             else if (islands.Count > 1 && (ranges[i].Least < least - slack || ranges[i].Most > most + slack))
-                problems.In(PlanFileRules.Lines).Whole(
+                problems.In(linesFile).Whole(
                     $"leaves an island whose generators cannot meet its load: buses {GridRules.BusNames(network, island)}: join it to the rest, or change its generators");
         }
 
         if (islands.Count > 1)
-            problems.Warn(PlanFileRules.Lines, null, string.Create(
+            problems.Warn(linesFile, null, string.Create(
                 CultureInfo.InvariantCulture,
                 $"leaves {islands.Count} islands, each of which balances by itself; the smallest is {GridRules.BusNames(network, islands.MinBy(island => island.Length)!)}"));
     }
