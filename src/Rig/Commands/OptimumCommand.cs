@@ -28,7 +28,7 @@ internal static class OptimumCommand
     private static int Run(string planFolder, int cycle, Screen screen)
     {
         if (cycle < 1)
-            throw new RigFailure(ExitCodes.PlanWrong, $"--cycle counts from 1; it is {cycle}.");
+            throw new RigException(ExitCodes.PlanWrong, $"--cycle counts from 1; it is {cycle}.");
         var (plan, _) = PlanLoader.Load(planFolder);
         var load = plan.LoadMw(cycle);
         var clock = Stopwatch.StartNew();
@@ -37,9 +37,9 @@ internal static class OptimumCommand
         if (screen.Json)
             Console.Out.WriteLine(ToJson(plan.Network, optimum, seconds));
         if (optimum.Status == OptimumStatus.Infeasible)
-            throw new RigFailure(ExitCodes.PlanWrong, $"The loads of cycle {cycle} cannot be served by this grid. {optimum.Infeasibility?.Describe(plan.Network)}");
+            throw new RigException(ExitCodes.PlanWrong, $"The loads of cycle {cycle} cannot be served by this grid. {optimum.Infeasibility?.Describe(plan.Network)}");
         if (optimum.Status != OptimumStatus.Optimal)
-            throw new RigFailure(ExitCodes.Broke, $"No optimum was found after {optimum.Iterations} iterations; the numbers of the plan are too far apart in size.");
+            throw new RigException(ExitCodes.Broke, $"No optimum was found after {optimum.Iterations} iterations; the numbers of the plan are too far apart in size.");
         if (!screen.Json)
             Show(screen, plan.Network, load, optimum, seconds);
         return ExitCodes.Passed;

@@ -31,7 +31,7 @@ internal static class RehearseCommand
         screen.Text.WriteLine(RunNotes.PrivacyNote(plan));
         foreach (var warning in warnings)
             screen.Text.WriteLine($"warning: {warning.Text}");
-        RunNotes.RefuseWhatIsNotRehearsed(plan);
+        RunNotes.RefuseUnusablePrivacy(plan);
         var binaries = await AgentBinaries.LocateAsync(binaryOptions, screen.Text.WriteLine, cancel).ConfigureAwait(false);
         screen.Text.WriteLine(binaries.Description);
         var folder = RunFolder.Create(runs, plan.Name, TimeProvider.System.GetUtcNow());

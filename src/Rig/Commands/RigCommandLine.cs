@@ -32,7 +32,7 @@ public static class RigCommandLine
         {
             return await parsed.InvokeAsync(new InvocationConfiguration { EnableDefaultExceptionHandler = false }).ConfigureAwait(false);
         }
-        catch (RigFailure failure)
+        catch (RigException failure)
         {
             await Console.Error.WriteLineAsync(failure.Message).ConfigureAwait(false);
             return failure.ExitCode;

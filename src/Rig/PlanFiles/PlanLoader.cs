@@ -5,7 +5,7 @@ namespace Halfvoice.Rig.PlanFiles;
 /// <summary>Reads a plan folder for a command, or ends the command with all that is wrong.</summary>
 public static class PlanLoader
 {
-    /// <exception cref="RigFailure">The plan is wrong (exit code 2).</exception>
+    /// <exception cref="RigException">The plan is wrong (exit code 2).</exception>
     public static (Plan Plan, IReadOnlyList<PlanWarning> Warnings) Load(string folder)
     {
         var reading = PlanReader.Read(new FolderPlanFiles(folder));
@@ -13,6 +13,6 @@ public static class PlanLoader
             return (plan, reading.Warnings);
         var count = reading.Errors.Count == 1 ? "1 error" : $"{reading.Errors.Count} errors";
         var lines = reading.ErrorLines().Prepend($"The plan in {folder} has {count}:");
-        throw new RigFailure(ExitCodes.PlanWrong, string.Join(Environment.NewLine, lines));
+        throw new RigException(ExitCodes.PlanWrong, string.Join(Environment.NewLine, lines));
     }
 }

@@ -14,12 +14,18 @@ public sealed class BundleWriter
     private readonly Plan _plan;
     private readonly SetupBuilder _setups;
     private readonly LabAuthority _authority;
+    private readonly DateTimeOffset? _validUntil;
 
-    public BundleWriter(Plan plan, SetupBuilder setups, LabAuthority authority)
+    /// <param name="plan">A validated plan.</param>
+    /// <param name="setups">Its setups.</param>
+    /// <param name="authority">Issues the identities.</param>
+    /// <param name="validUntil">Last moment of the identities; 30 days from now when null.</param>
+    public BundleWriter(Plan plan, SetupBuilder setups, LabAuthority authority, DateTimeOffset? validUntil = null)
     {
         _plan = plan;
         _setups = setups;
         _authority = authority;
+        _validUntil = validUntil;
     }
 
     /// <summary>Writes all bundles: FOLDER/coordinator and FOLDER/sites/SITE.</summary>
@@ -49,7 +55,7 @@ public sealed class BundleWriter
 
     private void Write(string folder, IdentityRequest request)
     {
-        using var identity = _authority.Issue(request);
+        using var identity = _authority.Issue(request with { ValidUntil = _validUntil });
         identity.Write(folder, "identity");
         _authority.WriteCertificate(Path.Combine(folder, "authority.pem"));
         _authority.WriteRevocationList(Path.Combine(folder, "revoked.crl"));

@@ -39,7 +39,7 @@ public sealed class Rehearsal
     public TimeSpan? ReadyAfter { get; private set; }
 
     /// <summary>Runs all cycles and judges them.</summary>
-    /// <exception cref="RigFailure">The rehearsal broke.</exception>
+    /// <exception cref="RigException">The rehearsal broke.</exception>
     public async Task<Verdict> RunAsync(IReadOnlyDictionary<string, string> options, CancellationToken cancel)
     {
         WriteInputs();
@@ -110,7 +110,7 @@ public sealed class Rehearsal
         if (first == watch)
             await watch.ConfigureAwait(false);
         if (!ready.Task.IsCompletedSuccessfully)
-            throw new RigFailure(ExitCodes.Broke, $"The coordinator did not listen within {ReadyWithin.TotalSeconds:0} s. See {_folder.Logs}.");
+            throw new RigException(ExitCodes.Broke, $"The coordinator did not listen within {ReadyWithin.TotalSeconds:0} s. See {_folder.Logs}.");
         began = TimeProvider.System.GetTimestamp();
         foreach (var site in _plan.Network.Sites)
             StartAgent(fleet, site, await ready.Task.ConfigureAwait(false));
@@ -145,8 +145,8 @@ public sealed class Rehearsal
         }
 
         if (died.IsCanceled)
-            throw new RigFailure(ExitCodes.Broke, $"The rehearsal did not end within {LongestRun().TotalMinutes:0} minutes, the longest that its rounds and deadlines allow. See {_folder.Logs}.");
-        throw new RigFailure(ExitCodes.Broke, $"{await died.ConfigureAwait(false)}{Environment.NewLine}See {_folder.Logs}.");
+            throw new RigException(ExitCodes.Broke, $"The rehearsal did not end within {LongestRun().TotalMinutes:0} minutes, the longest that its rounds and deadlines allow. See {_folder.Logs}.");
+        throw new RigException(ExitCodes.Broke, $"{await died.ConfigureAwait(false)}{Environment.NewLine}See {_folder.Logs}.");
     }
 
     /// <summary>The first process that ended without being asked to; an agent that heard the farewell ends with 0 and is none.</summary>

@@ -32,7 +32,7 @@ public sealed class RunFolder
     public string SiteState(string site) => System.IO.Path.Combine(States, "sites", site);
 
     /// <summary>Makes a new run folder, readable by its owner only.</summary>
-    /// <exception cref="RigFailure">It cannot be made.</exception>
+    /// <exception cref="RigException">It cannot be made.</exception>
     public static RunFolder Create(string runs, string planName, DateTimeOffset now)
     {
         var slug = string.Concat(planName.ToLowerInvariant().Select(c => char.IsAsciiLetterOrDigit(c) ? c : '-')).Trim('-');
@@ -56,7 +56,7 @@ public sealed class RunFolder
         }
         catch (Exception problem) when (problem is IOException or UnauthorizedAccessException)
         {
-            throw new RigFailure(ExitCodes.Broke, $"The run folder cannot be made under {runs}: {problem.Message}", problem);
+            throw new RigException(ExitCodes.Broke, $"The run folder cannot be made under {runs}: {problem.Message}", problem);
         }
     }
 

@@ -41,7 +41,24 @@ public static class RunNotes
         return notes;
     }
 
-    private static string PrivacyNote(Plan plan)
+    /// <summary>Refuses privacy figures that no noise can be derived from, before any process starts.</summary>
+    /// <exception cref="RigException">The privacy figures give no usable noise (exit code 2).</exception>
+    public static void RefuseUnusablePrivacy(Plan plan)
+    {
+        try
+        {
+            var setups = new Coordination.SetupBuilder(plan);
+            foreach (var site in plan.Network.Sites)
+                Coordination.SitePrivacy.Derive(setups.ForSite(site));
+        }
+        catch (ArgumentException wrong)
+        {
+            throw new RigException(ExitCodes.PlanWrong, $"plan.yaml: privacy: {wrong.Message}", wrong);
+        }
+    }
+
+    /// <summary>The promise in one sentence.</summary>
+    public static string PrivacyNote(Plan plan)
     {
         if (plan.Privacy.Mechanism == MechanismKind.None)
             return "Mechanism none: answers are NOT veiled; a listener recovers every load from them.";

@@ -22,13 +22,13 @@ public sealed class RunScorer
     }
 
     /// <summary>Writes record.sqlite and truth.sqlite, and judges the run.</summary>
-    /// <exception cref="RigFailure">The run left no usable journal.</exception>
+    /// <exception cref="RigException">The run left no usable journal.</exception>
     public Verdict Judge(IReadOnlyDictionary<string, string> options, string binaries)
     {
         using var journal = new JournalReader(Path.Combine(_folder.CoordinatorState, "journal.sqlite"));
         var cycles = journal.Cycles();
         if (cycles.Count == 0)
-            throw new RigFailure(ExitCodes.Broke, $"The run ended without one finished cycle. See {_folder.Logs}.");
+            throw new RigException(ExitCodes.Broke, $"The run ended without one finished cycle. See {_folder.Logs}.");
         RecordWriter.Write(_folder.Record, _plan, _setups.Coordinator, journal);
         var (setPoints, epsilon) = ReadSites();
         using var truth = new TruthWriter(_folder.Truth, _plan);

@@ -26,7 +26,7 @@ public sealed class Screen
     public IAnsiConsole Tables { get; }
 
     /// <summary>A table in the house style.</summary>
-    public static Table NewTable(string title) => new Table().Title(Markup.Escape(title)).Border(TableBorder.Simple).LeftAligned();
+    public static Table NewTable(string title) => new Table().Title(Markup.Escape(title)).Border(TableBorder.Simple);
 
     public void Show(Table table) => Tables.Write(table);
 }
