@@ -1,5 +1,3 @@
-using Halfvoice.Plans;
-
 namespace Halfvoice.Tests.Plans;
 
 /// <summary>The plans that the project ships: feasible with room, and with a line that binds in every snapshot.</summary>
