@@ -58,12 +58,16 @@ internal sealed class InteriorPoint
     /// <summary>Iterations done.</summary>
     public int Iterations { get; private set; }
 
-    /// <summary>Runs until the tolerance is met (true), or nothing moves any more or the iterations run out (false).</summary>
-    public bool Run()
+    /// <summary>
+    /// Runs until a tolerance is met (true), or nothing moves any more or the iterations run out (false). Goes on from where
+    /// it stopped when called again with a smaller tolerance.
+    /// </summary>
+    public bool Run(double tolerance)
     {
-        StartingPoint.Set(_program, Point);
+        if (Iterations == 0)
+            StartingPoint.Set(_program, Point);
         var shortSteps = 0;
-        for (Iterations = 0; ; Iterations++)
+        for (; ; Iterations++)
         {
             _residuals.Evaluate(Point);
             var error = Math.Max(Math.Max(_residuals.Primal, _residuals.Dual), _residuals.Gap);
@@ -75,7 +79,7 @@ internal sealed class InteriorPoint
                 Point.CopyTo(Best);
             }
 
-            if (error <= _options.Tolerance)
+            if (error <= tolerance)
                 return true;
             if (Iterations >= _options.MaxIterations || shortSteps >= ShortStepsInARow || error > 1e8 * Math.Max(BestError, 1e-6))
                 return false;
