@@ -70,7 +70,7 @@ public class CentralEdgeCaseTests
         // Bus 1 sees +0.1 and −0.1 per unit: its own susceptance is zero, so that no pivot of one bus alone would do.
         var network = Grid(
             4,
-            [new Line("line", 0, 1, 0.1), new Line("capacitor", 1, 2, -0.1), new Line("far", 2, 3, 0.05, 30), new Line("around", 0, 3, 0.3)],
+            [new Line("a", 0, 1, 0.1), new Line("capacitor", 1, 2, -0.1), new Line("b", 2, 3, 0.05, 30), new Line("c", 0, 3, 0.3)],
             new Generator("Cheap", 0, 0, 100, 0, 10), new Generator("Dear", 3, 0, 100, 0.02, 30));
         double[] load = [0, 10, 20, 60];
         var optimum = CentralOptimum.Solve(network, load);
