@@ -248,4 +248,26 @@ public class CentralProjectionTests
         Assert.Throws<ArgumentException>(() => projection.Project([1, double.NaN], new double[2]));
         Assert.Throws<ArgumentException>(() => projection.Project([1], new double[2]));
     }
+
+    /// <summary>Two cases in which a susceptance matrix loses a pivot: a lone series capacitor, and one that cancels its line.</summary>
+    [Fact]
+    public void Series_capacitors_are_projected_exactly()
+    {
+        Bus[] buses = [new("A", "A"), new("B", "B"), new("C", "C"), new("D", "D")];
+        Line[] lone = [new("capacitor", 0, 1, -0.03, 20), new("other", 2, 3, 0.1)];
+        Line[] cancelling =
+            [new("a", 0, 1, 0.1, 20), new("capacitor", 1, 2, -0.1), new("b", 2, 3, 0.05, 30), new("c", 0, 3, 0.3)];
+        foreach (var lines in (Line[][])[lone, cancelling])
+        {
+            var network = new Network(100, buses, lines, []);
+            double[] penalty = [1, 0.5, 2, 1], wish = [60, -25, -50, 5];
+            bool[] free = [true, true, true, true];
+            var projection = new NetworkProjection(network, penalty, free, PriceScale);
+            var z = new double[4];
+            var outcome = projection.Project(wish, z);
+            Assert.False(outcome.Relaxed);
+            Assert.True(outcome.ActiveLines > 0);
+            CertificateHolds(network, penalty, free, wish, z, projection.LinePricePerMwh, lines[0].Name);
+        }
+    }
 }
