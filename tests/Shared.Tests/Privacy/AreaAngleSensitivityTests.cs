@@ -190,10 +190,10 @@ public class AreaAngleSensitivityTests
     [Fact]
     public void Sites_too_large_to_visit_every_set_get_the_price_bound()
     {
-        var lines = Enumerable.Range(0, 15).Select(i => new AngleSiteLine(i % 2, 2 + i, 50, true)).ToArray();
-        var large = new AngleSiteShape(2, [.. Enumerable.Repeat(1_000.0, 17)], lines, 100);
+        var lines = Enumerable.Range(0, 17).Select(i => new AngleSiteLine(i % 2, 2 + i, 50, true)).ToArray();
+        var large = new AngleSiteShape(2, [.. Enumerable.Repeat(1_000.0, 19)], lines, 100);
         var bound = AngleSensitivity.For(large, 1);
         Assert.Equal(SensitivityMethod.UnservedPrice, bound.Method);
-        Assert.Equal(1, bound.L1 / Math.Sqrt(17 / 1_000.0 * 2 * 100), 5);
+        Assert.Equal(1, bound.L1 / Math.Sqrt(19 / 1_000.0 * 2 * 100), 5);
     }
 }

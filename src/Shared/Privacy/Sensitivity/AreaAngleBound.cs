@@ -8,11 +8,12 @@ namespace Halfvoice.Privacy;
 internal sealed class AreaAngleBound
 {
     /// <summary>Limited branches and own buses together up to which all sets are visited.</summary>
-    internal const int MaxSize = 16;
+    internal const int MaxSize = 18;
 
     private readonly AngleSiteShape _shape;
     private readonly AngleBranch[] _branches;
     private readonly AngleBranch[] _limited;
+    private readonly HashSet<string> _visited = [];
     private double? _worst = 0;
 
     private AreaAngleBound(AngleSiteShape shape, AngleBranch[] branches)
@@ -42,12 +43,15 @@ internal sealed class AreaAngleBound
             return;
         if (depth == _limited.Length)
         {
-            VisitBuses(new AreaGroups(_shape, _branches, label));
+            // Different held branches may bind the same nodes together; labels are least node numbers, so equal sets look equal.
+            if (_visited.Add(string.Concat(label.Select(node => (char)node))))
+                VisitBuses(new AreaGroups(_shape, _branches, label));
             return;
         }
 
         Visit(depth + 1, label);
-        var (keep, drop) = (label[_limited[depth].From], label[_limited[depth].To]);
+        var (from, to) = (label[_limited[depth].From], label[_limited[depth].To]);
+        var (keep, drop) = (Math.Min(from, to), Math.Max(from, to));
         if (keep != drop)
             Visit(depth + 1, [.. label.Select(x => x == drop ? keep : x)]);
     }
