@@ -66,11 +66,13 @@ internal static class BenchmarkCases
         var capacity = plants.Sum(plant => plant.MaxMw);
         var shares = plants.Select(plant => plant with { MinMw = plant.MaxMw * total / capacity, MaxMw = plant.MaxMw * total / capacity });
         var even = CentralOptimum.Solve(new Network(100, buses, open, shares.ToArray()), load);
-        if (even.FlowMw.Length != open.Length)
-            throw new InvalidOperationException("No flows.");
+        if (cheap.Status != OptimumStatus.Optimal || even.Status != OptimumStatus.Optimal)
+            throw new InvalidOperationException("The unlimited network should have an optimum.");
         var lines = open.Select((line, l) => line with
         {
-            LimitMw = Math.Max(20, Math.Max(1.05 * Math.Abs(even.FlowMw[l]), (random.Next(8) == 0 ? 0.8 : 1.3) * Math.Abs(cheap.FlowMw[l]))),
+            LimitMw = Math.Max(
+                Math.Max(20, 1.05 * Math.Abs(even.FlowMw[l])),
+                (random.Next(8) == 0 ? 0.8 : 1.3) * Math.Abs(cheap.FlowMw[l])),
         }).ToArray();
         return (new Network(100, buses, lines, plants), load);
     }

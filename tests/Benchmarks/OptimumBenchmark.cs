@@ -16,7 +16,9 @@ public static class OptimumBenchmark
     public static int Run(string[] args)
     {
         var quick = args.Contains("quick");
-        Console.WriteLine("buses lines plants | optimum ms (iterations) | GLOP ms | GLOP/optimum | cost difference | projection us (lines active)");
+        Console.WriteLine(
+            "network, buses, lines, plants | optimum ms (iterations) | GLOP ms | GLOP/optimum | cost difference | "
+            + "projection us (lines at limit)");
         foreach (var (name, network, load) in Cases(quick))
             Measure(name, network, load);
         return 0;
@@ -139,7 +141,11 @@ public static class OptimumBenchmark
         for (var call = -calls; call < calls; call++)
         {
             for (var i = 0; i < buses; i++)
-                asked[i] = wish[i] + (free[i] ? (0.04 * range[i] * (random.NextDouble() - 0.5)) - (optimum.PricePerMwh[i] / penalty[i]) : 0);
+            {
+                var moved = (0.04 * range[i] * (random.NextDouble() - 0.5)) - (optimum.PricePerMwh[i] / penalty[i]);
+                asked[i] = wish[i] + (free[i] ? moved : 0);
+            }
+
             var start = Stopwatch.GetTimestamp();
             var outcome = projection.Project(asked, result);
             if (call >= 0)

@@ -105,7 +105,8 @@ public static class CommonDataFormat
 
         problems.Warn(options.FileName, null, string.Create(
             CultureInfo.InvariantCulture,
-            $"has no costs or limits of plants: {draft.Generators.Count} plants got placeholders (typical, unverified: replace them): up to twice the solved generation, 20 to 40 $/MWh"));
+            $"has no costs or limits of plants: {draft.Generators.Count} plants got placeholders (typical, unverified: replace them): "
+            + $"up to twice the solved generation, 20 to 40 $/MWh"));
     }
 
     private static Plan Assemble(string title, CommonDataFormatOptions options, List<CdfBus> buses, GridDraft draft, FileProblems problems)

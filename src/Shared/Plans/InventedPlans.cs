@@ -49,7 +49,8 @@ public static class InventedPlans
         var owner = InventedSites.Divide(map, sites, numbers);
         var (buses, indexOf) = Buses(map, owner, sites, names);
         var withPlants = InventedPlants.ChooseSitesWithPlants(sites, numbers);
-        var siteOf = buses.Select(bus => bus.Site).Distinct().Select((name, i) => (name, i)).ToDictionary(pair => pair.name, pair => pair.i);
+        var siteOf = buses.Select(bus => bus.Site).Distinct().Select((name, i) => (name, i))
+            .ToDictionary(pair => pair.name, pair => pair.i, StringComparer.Ordinal);
         var baseLoad = InventedPlants.Loads(buses, bus => withPlants[siteOf[buses[bus].Site]], numbers);
         var plants = InventedPlants.Plants(buses, PlantBuses(buses, siteOf, withPlants, numbers), baseLoad.Sum(), numbers);
         var lines = Lines(map, buses, indexOf, numbers);

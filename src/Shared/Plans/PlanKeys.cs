@@ -1,4 +1,4 @@
-using System.Globalization;
+using static Halfvoice.Plans.PlanKeyForms;
 
 namespace Halfvoice.Plans;
 
@@ -11,7 +11,8 @@ namespace Halfvoice.Plans;
 public sealed record PlanKey(string Path, string Unit, string Range, string Default, string Meaning)
 {
     /// <summary>Puts a value into the draft, or returns the rule that it breaks.</summary>
-    internal Func<SettingsDraft, string, string?> Apply { get; init; } = (_, _) => throw new InvalidOperationException("This key has no rule.");
+    internal Func<SettingsDraft, string, string?> Apply { get; init; } =
+        (_, _) => throw new InvalidOperationException("This key has no rule.");
 }
 
 /// <summary>
@@ -20,9 +21,6 @@ public sealed record PlanKey(string Path, string Unit, string Range, string Defa
 /// </summary>
 public static class PlanKeys
 {
-    private const string DurationUnit = "duration: 600ms, 2s, 5m, 1h";
-    private const string FractionUnit = "fraction: 0.5% or 0.005";
-
     private static readonly (string Name, SchemeKind Value)[] Schemes = [("angle", SchemeKind.Angle), ("injection", SchemeKind.Injection)];
 
     private static readonly (string Name, MechanismKind Value)[] Mechanisms =
@@ -49,16 +47,16 @@ public static class PlanKeys
     internal static IReadOnlyDictionary<string, PlanKey> ByPath { get; } = All.ToDictionary(key => key.Path, StringComparer.Ordinal);
 
     /// <summary>The name that plan.yaml gives a scheme.</summary>
-    public static string NameOf(SchemeKind kind) => Array.Find(Schemes, pair => pair.Value == kind).Name;
+    public static string NameOf(SchemeKind kind) => Schemes.First(pair => pair.Value == kind).Name;
 
     /// <summary>The name that plan.yaml gives a mechanism.</summary>
-    public static string NameOf(MechanismKind kind) => Array.Find(Mechanisms, pair => pair.Value == kind).Name;
+    public static string NameOf(MechanismKind kind) => Mechanisms.First(pair => pair.Value == kind).Name;
 
     /// <summary>The name that plan.yaml gives a kind of noise.</summary>
-    public static string NameOf(NoiseKind kind) => Array.Find(Noises, pair => pair.Value == kind).Name;
+    public static string NameOf(NoiseKind kind) => Noises.First(pair => pair.Value == kind).Name;
 
     /// <summary>The name that plan.yaml gives a scope.</summary>
-    public static string NameOf(PrivacyScope scope) => Array.Find(Scopes, pair => pair.Value == scope).Name;
+    public static string NameOf(PrivacyScope scope) => Scopes.First(pair => pair.Value == scope).Name;
 
     private static PlanKey[] General() =>
     [
@@ -71,7 +69,7 @@ public static class PlanKeys
             },
         },
         Number("base_mva", "MVA", new(0, 1e6, LeastIsOpen: true, Unit: "MVA"), "required",
-            "Power base that reactances in per unit refer to.", (draft, value) => draft.BaseMva = value),
+            "Power base that reactances in per unit refer to.", (draft, value) => draft.BaseMva = value!.Value),
         Duration("interval", "1s", "24h", "5m", "Length of a dispatch interval.", (draft, value) => draft.Interval = value),
         Whole("cycles", 1, 100_000, "1", "Dispatch cycles that a rehearsal runs.", (draft, value) => draft.Cycles = value),
     ];
@@ -81,64 +79,81 @@ public static class PlanKeys
         Choice("scheme.kind", Schemes, "injection", "How sites and coordinator reach agreement.",
             (draft, value) => draft.Scheme = draft.Scheme with { Kind = value }),
         Number("scheme.penalty", "factor, or auto", new(0, 1000, LeastIsOpen: true), "auto (1)",
-            "Multiplies the automatic penalty.", (draft, value) => draft.Scheme = draft.Scheme with { PenaltyFactor = value }, auto: draft => draft.Scheme = draft.Scheme with { PenaltyFactor = 1 }),
-        Number("scheme.relaxation", "factor, or auto", new(1, 2, MostIsOpen: true), "auto (injection 1.2, angle 1.6)",
-            "Over-relaxation of the exchange.", (draft, value) => draft.Scheme = draft.Scheme with { Relaxation = value }, auto: draft => draft.Scheme = draft.Scheme with { Relaxation = null }),
+            "Multiplies the automatic penalty.",
+            (draft, value) => draft.Scheme = draft.Scheme with { PenaltyFactor = value ?? 1 }, "auto"),
+        Number("scheme.relaxation", "factor, or auto", new(1, 2, MostIsOpen: true), "auto (injection 1.2, angle 1)",
+            "Over-relaxation of the exchange.",
+            (draft, value) => draft.Scheme = draft.Scheme with { Relaxation = value }, "auto"),
         Number("scheme.price_scale", "$/MWh, or auto", new(0, 1e6, LeastIsOpen: true, Unit: "$/MWh"), "auto (from the plants' costs)",
-            "Public price scale that the automatic penalty starts from.", (draft, value) => draft.Scheme = draft.Scheme with { PriceScalePerMwh = value }, auto: draft => draft.Scheme = draft.Scheme with { PriceScalePerMwh = null }),
+            "Public price scale that the automatic penalty starts from.",
+            (draft, value) => draft.Scheme = draft.Scheme with { PriceScalePerMwh = value }, "auto"),
     ];
 
     private static PlanKey[] StopKeys() =>
     [
         Fraction("stop.mismatch", new(0, 1, LeastIsOpen: true), "0.5%",
-            "A cycle settles only below this mismatch, as a fraction of the reference load.", (draft, value) => draft.Stop = draft.Stop with { MismatchFraction = value }),
+            "A cycle settles only below this mismatch, as a fraction of the reference load.",
+            (draft, value) => draft.Stop = draft.Stop with { MismatchFraction = value }),
         Number("stop.price", "$/MWh", new(0, 1e6, LeastIsOpen: true, Unit: "$/MWh"), "0.05",
-            "A cycle settles only below this price move.", (draft, value) => draft.Stop = draft.Stop with { PriceMovePerMwh = value }),
-        Whole("stop.rounds", 1, 100_000, "200", "Hard cap of rounds in a cycle.", (draft, value) => draft.Stop = draft.Stop with { RoundCap = value }),
+            "A cycle settles only below this price move.",
+            (draft, value) => draft.Stop = draft.Stop with { PriceMovePerMwh = value!.Value }),
+        Whole("stop.rounds", 1, 100_000, "200", "Hard cap of rounds in a cycle.",
+            (draft, value) => draft.Stop = draft.Stop with { RoundCap = value }),
         Number("stop.reference_load_mw", "MW, or auto", new(0, 1e7, LeastIsOpen: true, Unit: "MW"), "auto (half the installed capacity)",
             "Public figure for total demand that the mismatch limit refers to.",
-            (draft, value) => draft.Stop = draft.Stop with { ReferenceLoadMw = value }, auto: draft => draft.Stop = draft.Stop with { ReferenceLoadMw = null }),
+            (draft, value) => draft.Stop = draft.Stop with { ReferenceLoadMw = value }, "auto"),
     ];
 
     private static PlanKey[] PrivacyKeys() =>
     [
         Choice("privacy.mechanism", Mechanisms, "per-round", "How answers are veiled; none must be asked for and is announced.",
             (draft, value) => draft.Privacy = draft.Privacy with { Mechanism = value }),
-        Choice("privacy.noise", Noises, "laplace", "Distribution of the noise.", (draft, value) => draft.Privacy = draft.Privacy with { Noise = value }),
+        Choice("privacy.noise", Noises, "laplace", "Distribution of the noise.",
+            (draft, value) => draft.Privacy = draft.Privacy with { Noise = value }),
         Number("privacy.adjacency_mw", "MW", new(0, 1e6, LeastIsOpen: true, Unit: "MW"), "1",
-            "The change of a site's loads (sum of absolute changes) that must stay hidden.", (draft, value) => draft.Privacy = draft.Privacy with { AdjacencyMw = value }),
+            "The change of a site's loads (sum of absolute changes) that must stay hidden.",
+            (draft, value) => draft.Privacy = draft.Privacy with { AdjacencyMw = value!.Value }),
         Number("privacy.epsilon", "none", new(0, 1000, LeastIsOpen: true), "1",
-            "Privacy allowance of a site within the scope.", (draft, value) => draft.Privacy = draft.Privacy with { Epsilon = value }),
+            "Privacy allowance of a site within the scope.",
+            (draft, value) => draft.Privacy = draft.Privacy with { Epsilon = value!.Value }),
         Number("privacy.delta", "probability", new(0, 1, MostIsOpen: true), "0",
             "Probability allowance beside epsilon; Laplace noise under basic composition spends none of it.",
-            (draft, value) => draft.Privacy = draft.Privacy with { Delta = value }),
+            (draft, value) => draft.Privacy = draft.Privacy with { Delta = value!.Value }),
         Choice("privacy.scope", Scopes, "cycle", "The period whose answers together spend at most epsilon.",
             (draft, value) => draft.Privacy = draft.Privacy with { Scope = value }),
     ];
 
     private static PlanKey[] RoundKeys() =>
     [
-        Duration("rounds.deadline", "1ms", "1h", "2s", "Time that a round waits for answers.", (draft, value) => draft.Rounds = draft.Rounds with { Deadline = value }),
+        Duration("rounds.deadline", "1ms", "1h", "2s", "Time that a round waits for answers.",
+            (draft, value) => draft.Rounds = draft.Rounds with { Deadline = value }),
         Fraction("rounds.quorum", new(0, 1, LeastIsOpen: true), "90%",
-            "Share of the asked sites that must answer afresh for a round to count.", (draft, value) => draft.Rounds = draft.Rounds with { Quorum = value }),
-        Whole("rounds.hold_rounds", 0, 1000, "3",
-            "Rounds in a row for which a missing site's last answer may stand in.", (draft, value) => draft.Rounds = draft.Rounds with { HoldRounds = value }),
+            "Share of the asked sites that must answer afresh for a round to count.",
+            (draft, value) => draft.Rounds = draft.Rounds with { Quorum = value }),
+        Whole("rounds.hold_rounds", 0, 1000, "3", "Rounds in a row for which a missing site's last answer may stand in.",
+            (draft, value) => draft.Rounds = draft.Rounds with { HoldRounds = value }),
     ];
 
     private static PlanKey[] LinkKeys(string prefix, string standard) =>
     [
         Choice(prefix + "profile", [.. LinkProfiles.ByName.Keys.Select(name => (name, name))], standard,
-            "Named kind of link; its values are typical and unverified.", (draft, value) => draft.Link.Profile = value),
-        Duration(prefix + "latency", "0ms", "1m", standard, "Typical round trip.", (draft, value) => draft.Link.RoundTrip = value),
-        Duration(prefix + "jitter", "0ms", "1m", standard, "Typical variation of the round trip.", (draft, value) => draft.Link.Jitter = value),
-        Fraction(prefix + "loss", new(0, 1, MostIsOpen: true), standard, "Share of packets lost.", (draft, value) => draft.Link.LossFraction = value),
-        Number(prefix + "rate", "kbit/s, or unlimited", new(0, 1e9, LeastIsOpen: true, Unit: "kbit/s"), standard, "Bandwidth in each direction.",
-            (draft, value) => draft.Link.RateKbitPerS = value, auto: draft => draft.Link.RateKbitPerS = double.PositiveInfinity, autoName: "unlimited"),
+            "Named kind of link; its values are typical and unverified.",
+            (draft, value) => draft.Link.Profile = value),
+        Duration(prefix + "latency", "0ms", "1m", standard, "Typical round trip.",
+            (draft, value) => draft.Link.RoundTrip = value),
+        Duration(prefix + "jitter", "0ms", "1m", standard, "Typical variation of the round trip.",
+            (draft, value) => draft.Link.Jitter = value),
+        Fraction(prefix + "loss", new(0, 1, MostIsOpen: true), standard, "Share of packets lost.",
+            (draft, value) => draft.Link.LossFraction = value),
+        Number(prefix + "rate", "kbit/s, or unlimited", new(0, 1e9, LeastIsOpen: true, Unit: "kbit/s"), standard,
+            "Bandwidth in each direction.",
+            (draft, value) => draft.Link.RateKbitPerS = value ?? double.PositiveInfinity, "unlimited"),
     ];
 
     private static PlanKey[] AcceptKeys() =>
     [
-        Duration("accept.settle_within", "1ms", "24h", "the interval less 60 s, at least half of it", "Every cycle settles within this time.",
+        Duration("accept.settle_within", "1ms", "24h", "the interval less 60 s, at least half of it",
+            "Every cycle settles within this time.",
             (draft, value) => draft.Accept = draft.Accept with { SettleWithin = value }),
         Fraction("accept.cost_gap", new(0, 10), "1%", "Delivered cost above the central optimum, at most.",
             (draft, value) => draft.Accept = draft.Accept with { CostGapFraction = value }),
@@ -146,96 +161,8 @@ public static class PlanKeys
             (draft, value) => draft.Accept = draft.Accept with { ReserveMw = value }),
         Fraction("accept.line_loading", new(0, 10, LeastIsOpen: true), "100%", "Loading of any line, at most.",
             (draft, value) => draft.Accept = draft.Accept with { LineLoadingFraction = value }),
-        Number("accept.epsilon_per_day", "none", new(0, 1e9), "not judged", "Privacy loss of a site in a day of cycles like these, at most.",
+        Number("accept.epsilon_per_day", "none", new(0, 1e9), "not judged",
+            "Privacy loss of a site in a day of cycles like these, at most.",
             (draft, value) => draft.Accept = draft.Accept with { EpsilonPerDay = value }),
     ];
-
-    private static PlanKey Number(
-        string path, string unit, NumberRule rule, string standard, string meaning, Action<SettingsDraft, double> set,
-        Action<SettingsDraft>? auto = null, string autoName = "auto")
-    {
-        var orAuto = auto is null ? "" : $", or {autoName}";
-        return new PlanKey(path, unit, rule.Range + orAuto, standard, meaning)
-        {
-            Apply = (draft, text) =>
-            {
-                if (auto is not null && text == autoName)
-                {
-                    auto(draft);
-                    return null;
-                }
-
-                if (!Quantity.TryNumber(text, out var value))
-                    return $"must be a number {rule.Range}{orAuto}";
-                if (rule.Broken(value) is { } broken)
-                    return double.IsFinite(value) ? broken + orAuto : $"{broken}: {rule.Range}{orAuto}";
-                set(draft, value);
-                return null;
-            },
-        };
-    }
-
-    private static PlanKey Whole(string path, int least, int most, string standard, string meaning, Action<SettingsDraft, int> set)
-    {
-        var range = string.Create(CultureInfo.InvariantCulture, $"{least} to {most:#,##0}");
-        return new PlanKey(path, "whole number", range, standard, meaning)
-        {
-            Apply = (draft, text) =>
-            {
-                if (!int.TryParse(text, NumberStyles.AllowLeadingSign, CultureInfo.InvariantCulture, out var value) || value < least || value > most)
-                    return "must be a whole number, " + range;
-                set(draft, value);
-                return null;
-            },
-        };
-    }
-
-    private static PlanKey Fraction(string path, NumberRule rule, string standard, string meaning, Action<SettingsDraft, double> set) =>
-        new(path, FractionUnit, rule.Range, standard, meaning)
-        {
-            Apply = (draft, text) =>
-            {
-                if (!Quantity.TryFraction(text, out var value))
-                    return $"must be a fraction such as 0.005 or 0.5%, {rule.Range}";
-                if (rule.Broken(value) is { } broken)
-                    return double.IsFinite(value) ? $"{broken} (a fraction; 1 is 100%)" : $"{broken}: {rule.Range}";
-                set(draft, value);
-                return null;
-            },
-        };
-
-    private static PlanKey Duration(string path, string least, string most, string standard, string meaning, Action<SettingsDraft, TimeSpan> set)
-    {
-        if (!Quantity.TryDuration(least, out var low) || !Quantity.TryDuration(most, out var high))
-            throw new ArgumentException("A duration in the key table cannot be read.");
-        var range = $"{least} to {most}";
-        return new PlanKey(path, DurationUnit, range, standard, meaning)
-        {
-            Apply = (draft, text) =>
-            {
-                if (!Quantity.TryDuration(text, out var value))
-                    return $"must be a duration with its unit, such as 600ms, 2s, 5m or 1h: {range}";
-                if (value < low || value > high)
-                    return "must be a duration of " + range;
-                set(draft, value);
-                return null;
-            },
-        };
-    }
-
-    private static PlanKey Choice<T>(string path, (string Name, T Value)[] choices, string standard, string meaning, Action<SettingsDraft, T> set)
-    {
-        var range = "one of " + string.Join(", ", choices.Select(choice => choice.Name));
-        return new PlanKey(path, "name", range, standard, meaning)
-        {
-            Apply = (draft, text) =>
-            {
-                var index = Array.FindIndex(choices, choice => choice.Name == text);
-                if (index < 0)
-                    return $"must be {range}{NearestName.Hint(text, choices.Select(choice => choice.Name))}";
-                set(draft, choices[index].Value);
-                return null;
-            },
-        };
-    }
 }

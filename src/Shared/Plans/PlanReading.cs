@@ -17,8 +17,11 @@ public sealed record PlanReading(Plan? Plan, IReadOnlyList<PlanError> Errors, IR
                 yield return error.Text;
             var count = file.Count();
             var unread = count > PlanFileRules.MaxErrorsPerFile ? ", and its rest was not read" : "";
-            if (count > perFile)
-                yield return string.Create(CultureInfo.InvariantCulture, $"{file.Key}: and {count - perFile} more errors in this file{unread}");
+            if (count <= perFile)
+                continue;
+            yield return string.Create(
+                CultureInfo.InvariantCulture,
+                $"{file.Key}: and {count - perFile} more errors in this file{unread}");
         }
     }
 }

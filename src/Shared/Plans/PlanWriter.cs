@@ -49,7 +49,8 @@ public static class PlanWriter
     private static string Lines(Network network)
     {
         var extended = network.Lines.Any(line => line.ResistancePu is not null || line.EmergencyLimitMw is not null);
-        var text = new StringBuilder("line,from_bus,to_bus,reactance_pu,limit_mw" + (extended ? ",resistance_pu,emergency_limit_mw\n" : "\n"));
+        var text = new StringBuilder("line,from_bus,to_bus,reactance_pu,limit_mw");
+        text.Append(extended ? ",resistance_pu,emergency_limit_mw\n" : "\n");
         foreach (var line in network.Lines)
         {
             string[] fields =
@@ -110,8 +111,8 @@ public static class PlanWriter
 
     private static void Field(StringBuilder text, string field)
     {
-        var quote = field.AsSpan().ContainsAny("\",\r\n") || (field.Length > 0 && (char.IsWhiteSpace(field[0]) || char.IsWhiteSpace(field[^1])));
-        if (quote)
+        var hasBlankEnds = field.Length > 0 && (char.IsWhiteSpace(field[0]) || char.IsWhiteSpace(field[^1]));
+        if (hasBlankEnds || field.AsSpan().ContainsAny("\",\r\n"))
             text.Append('"').Append(field.Replace("\"", "\"\"", StringComparison.Ordinal)).Append('"');
         else
             text.Append(field);

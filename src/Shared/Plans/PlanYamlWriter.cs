@@ -120,6 +120,9 @@ internal static class PlanYamlWriter
             && text.All(character => char.IsAsciiLetterOrDigit(character) || character is ' ' or ',' or '.' or '-' or '_')
             && text[^1] != ' '
             && text.ToLowerInvariant() is not ("null" or "true" or "false" or "yes" or "no" or "on" or "off" or "y" or "n");
-        return plain ? text : "\"" + text.Replace("\\", "\\\\", StringComparison.Ordinal).Replace("\"", "\\\"", StringComparison.Ordinal) + "\"";
+        if (plain)
+            return text;
+        var escaped = text.Replace("\\", "\\\\", StringComparison.Ordinal).Replace("\"", "\\\"", StringComparison.Ordinal);
+        return "\"" + escaped + "\"";
     }
 }

@@ -51,7 +51,7 @@ public class CentralOptimumTests
         Assert.True(optimum.LinePricePerMwh[5] > 1);
     }
 
-    /// <summary>400 networks, seeds 0 to 399, against a simplex method; the infeasible among them must leave the same MW unserved.</summary>
+    /// <summary>400 networks, seeds 0 to 399, against a simplex method; the infeasible ones must leave as many MW unserved.</summary>
     [Fact]
     public void Linear_costs_agree_with_a_simplex_method()
     {
@@ -100,5 +100,32 @@ public class CentralOptimumTests
         }
 
         Assert.True(served >= 50, $"only {served} could be served");
+    }
+
+    /// <summary>Large enough for the ordering, the sparse factor and many binding lines to matter: a ladder of 1,500 buses.</summary>
+    [Fact]
+    public void A_large_network_meets_the_optimality_conditions()
+    {
+        var random = new Random(11);
+        const int Length = 500;
+        var buses = Enumerable.Range(0, 3 * Length).Select(i => new Bus($"B{i}", $"S{i}")).ToArray();
+        var lines = new List<Line>();
+        for (var i = 0; i < buses.Length; i++)
+        {
+            if (i % 3 != 2)
+                lines.Add(new Line($"R{i}", i, i + 1, 0.02 + (0.1 * random.NextDouble()), 20 + (40 * random.NextDouble())));
+            if (i + 3 < buses.Length)
+                lines.Add(new Line($"P{i}", i, i + 3, 0.02 + (0.1 * random.NextDouble()), 30 + (60 * random.NextDouble())));
+        }
+
+        var load = buses.Select(_ => 30 * random.NextDouble()).ToArray();
+        var plants = Enumerable.Range(0, 400).Select(g => new Generator(
+            $"G{g}", random.Next(buses.Length), 0, 50 + (100 * random.NextDouble()), g % 2 == 0 ? 0 : 0.1 * random.NextDouble(),
+            10 + (40 * random.NextDouble()))).ToArray();
+        var dear = buses.Select((_, i) => new Generator($"D{i}", i, 0, 40, 0, 200));
+        var network = new Network(100, buses, lines, [.. plants, .. dear]);
+        var optimum = CentralOptimum.Solve(network, load);
+        CentralCertificate.Holds(network, load, optimum);
+        Assert.True(optimum.LinePricePerMwh.Count(price => price > 1e-3) > 50);
     }
 }

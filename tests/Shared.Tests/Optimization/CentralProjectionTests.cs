@@ -140,7 +140,7 @@ public class CentralProjectionTests
                 Assert.False(cold.Relaxed);
                 var size = Math.Max(1, wish.Max(Math.Abs));
                 for (var i = 0; i < z.Length; i++)
-                    Assert.True(Math.Abs(z[i] - again[i]) <= 1e-9 * size, $"seed {seed}, call {call}, bus {i}: {z[i]} warm, {again[i]} cold");
+                    Assert.True(Math.Abs(z[i] - again[i]) <= 1e-9 * size, $"seed {seed}, call {call}, bus {i}: {z[i]}, cold {again[i]}");
             }
         }
 
@@ -175,6 +175,99 @@ public class CentralProjectionTests
                 var moved = wish[moves[k].Bus] + other.BlockMw[k];
                 Assert.True(Math.Abs(moved - z[moves[k].Bus]) <= 1e-5, $"seed {seed}, bus {moves[k].Bus}: {z[moves[k].Bus]}, {moved}");
             }
+        }
+    }
+
+    [Fact]
+    public void A_warm_projection_allocates_nothing()
+    {
+        var random = new Random(5);
+        Bus[] buses = [.. Enumerable.Range(0, 30).Select(i => new Bus($"B{i}", $"S{i}"))];
+        Line[] lines = [.. Enumerable.Range(0, 30).Select(i => new Line($"L{i}", i, (i + 1) % 30, 0.1, 40)),
+            .. Enumerable.Range(0, 15).Select(i => new Line($"M{i}", i, i + 15, 0.1, 40))];
+        var penalty = Enumerable.Repeat(1.0, 30).ToArray();
+        var free = Enumerable.Repeat(true, 30).ToArray();
+        var projection = new NetworkProjection(new Network(100, buses, lines, []), penalty, free, PriceScale);
+        var wishes = Enumerable.Range(0, 20).Select(_ => buses.Select(_ => 300 * (random.NextDouble() - 0.5)).ToArray()).ToArray();
+        var z = new double[30];
+        var held = wishes.Sum(wish => projection.Project(wish, z).ActiveLines);
+        Assert.True(held > 20);
+        var before = GC.GetAllocatedBytesForCurrentThread();
+        foreach (var wish in wishes)
+            projection.Project(wish, z);
+        Assert.Equal(0, GC.GetAllocatedBytesForCurrentThread() - before);
+    }
+
+    [Fact]
+    public void Fixed_injections_that_overload_a_line_are_relaxed_by_the_least_power()
+    {
+        Bus[] buses = [new("A", "A"), new("B", "B"), new("C", "C")];
+        Line[] lines = [new("A-B", 0, 1, 0.1, 30), new("B-C", 1, 2, 0.1, 100)];
+        var projection = new NetworkProjection(new Network(100, buses, lines, []), [1, 1, 1], [true, false, true], PriceScale);
+        var z = new double[3];
+        var outcome = projection.Project([50, -60, 10], z);
+        Assert.False(outcome.Relaxed);
+        double[] expected = [30, -60, 30];
+        for (var i = 0; i < 3; i++)
+            Assert.Equal(expected[i], z[i], 1e-9);
+
+        // With A fixed as well, 20 MW have to stay at A and to be left out at B.
+        var stuck = new NetworkProjection(new Network(100, buses, lines, []), [1, 1, 1], [false, false, true], PriceScale);
+        outcome = stuck.Project([50, -60, 10], z);
+        Assert.True(outcome.Relaxed && outcome.Converged);
+        Assert.Equal(20, outcome.UnservedMw, 1e-6);
+        Assert.Equal(30, z[0], 1e-6);
+        Assert.Equal(0, z.Sum(), 1e-6);
+    }
+
+    [Fact]
+    public void An_island_with_nothing_free_is_relaxed_when_out_of_balance()
+    {
+        Bus[] buses = [new("A", "A"), new("B", "B"), new("C", "C")];
+        Line[] lines = [new("A-B", 0, 1, 0.1)];
+        var projection = new NetworkProjection(new Network(100, buses, lines, []), [1, 1, 1], [true, true, false], PriceScale);
+        var z = new double[3];
+        var outcome = projection.Project([5, 3, -2], z);
+        Assert.True(outcome.Relaxed);
+        Assert.Equal(2, outcome.UnservedMw, 1e-6);
+        Assert.Equal(0, z[2], 1e-6);
+        Assert.Equal(1, z[0], 1e-6);
+        outcome = projection.Project([5, 3, 0], z);
+        Assert.False(outcome.Relaxed);
+        Assert.Equal([1, -1, 0], z);
+    }
+
+    [Fact]
+    public void Wrong_input_is_refused()
+    {
+        var network = new Network(100, [new("A", "A"), new("B", "B")], [new("A-B", 0, 1, 0.1)], []);
+        Assert.Throws<ArgumentException>(() => new NetworkProjection(network, [1], [true], PriceScale));
+        Assert.Throws<ArgumentException>(() => new NetworkProjection(network, [1, 0], [true, true], PriceScale));
+        Assert.Throws<ArgumentOutOfRangeException>(() => new NetworkProjection(network, [1, 1], [true, true], 0));
+        var projection = new NetworkProjection(network, [1, 0], [true, false], PriceScale);
+        Assert.Throws<ArgumentException>(() => projection.Project([1, double.NaN], new double[2]));
+        Assert.Throws<ArgumentException>(() => projection.Project([1], new double[2]));
+    }
+
+    /// <summary>Two cases in which a susceptance matrix loses a pivot: a lone series capacitor, and one that cancels its line.</summary>
+    [Fact]
+    public void Series_capacitors_are_projected_exactly()
+    {
+        Bus[] buses = [new("A", "A"), new("B", "B"), new("C", "C"), new("D", "D")];
+        Line[] lone = [new("capacitor", 0, 1, -0.03, 20), new("other", 2, 3, 0.1)];
+        Line[] cancelling =
+            [new("a", 0, 1, 0.1, 20), new("capacitor", 1, 2, -0.1), new("b", 2, 3, 0.05, 30), new("c", 0, 3, 0.3)];
+        foreach (var lines in (Line[][])[lone, cancelling])
+        {
+            var network = new Network(100, buses, lines, []);
+            double[] penalty = [1, 0.5, 2, 1], wish = [60, -25, -50, 5];
+            bool[] free = [true, true, true, true];
+            var projection = new NetworkProjection(network, penalty, free, PriceScale);
+            var z = new double[4];
+            var outcome = projection.Project(wish, z);
+            Assert.False(outcome.Relaxed);
+            Assert.True(outcome.ActiveLines > 0);
+            CertificateHolds(network, penalty, free, wish, z, projection.LinePricePerMwh, lines[0].Name);
         }
     }
 }

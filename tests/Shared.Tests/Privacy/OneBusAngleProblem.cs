@@ -61,21 +61,31 @@ internal sealed class OneBusAngleProblem
         foreach (var n in Neighbours)
             width += Math.Abs(n.Target) + Unserved * Math.Abs(n.B) * (1 / n.Weight + 1 / OwnWeight);
         var (low, high) = (-width, width);
+        var own = OwnTarget;
         for (var i = 0; i < Halvings; i++)
         {
-            var own = (low + high) / 2;
+            // Newton's step on a piecewise linear function ends on its piece; the bracket keeps it from going round in circles.
             var slope = OwnWeight * (own - OwnTarget);
+            var steepness = OwnWeight;
             foreach (var n in Neighbours)
+            {
                 slope += n.Weight * (Angle(n, own, price) - n.Target);
-            if (slope < 0)
-                low = own;
-            else
-                high = own;
+                steepness += Math.Abs(own - Loose(n, price)) < n.Reach ? 0 : n.Weight;
+            }
+
+            (low, high) = slope < 0 ? (own, high) : (low, own);
+            var next = own - slope / steepness;
+            if (next == own)
+                return own;
+            own = next > low && next < high ? next : (low + high) / 2;
         }
 
-        return (low + high) / 2;
+        return own;
     }
 
     private static double Angle((double Weight, double Target, double B, double Reach) n, double own, double price) =>
-        Math.Clamp(n.Target + price * n.B / n.Weight, own - n.Reach, own + n.Reach);
+        Math.Clamp(Loose(n, price), own - n.Reach, own + n.Reach);
+
+    private static double Loose((double Weight, double Target, double B, double Reach) n, double price) =>
+        n.Target + price * n.B / n.Weight;
 }

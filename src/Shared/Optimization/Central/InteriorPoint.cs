@@ -15,6 +15,9 @@ internal sealed class InteriorPoint
     private const double ShortStep = 1e-5;
     private const int ShortStepsInARow = 5;
 
+    // Iterations without a better point after which the problem is taken to have no solution nearby; the caller finds out why.
+    private const int PatienceIterations = 12;
+
     private readonly ScaledProgram _program;
     private readonly OptimumOptions _options;
     private readonly KktSystem _kkt;
@@ -58,12 +61,17 @@ internal sealed class InteriorPoint
     /// <summary>Iterations done.</summary>
     public int Iterations { get; private set; }
 
-    /// <summary>Runs until the tolerance is met (true), or nothing moves any more or the iterations run out (false).</summary>
-    public bool Run()
+    /// <summary>
+    /// Runs until a tolerance is met (true), or nothing moves any more or the iterations run out (false). Goes on from where
+    /// it stopped when called again with a smaller tolerance.
+    /// </summary>
+    public bool Run(double tolerance)
     {
-        StartingPoint.Set(_program, Point);
+        if (Iterations == 0)
+            StartingPoint.Set(_program, Point);
         var shortSteps = 0;
-        for (Iterations = 0; ; Iterations++)
+        var lastBetter = Iterations;
+        for (; ; Iterations++)
         {
             _residuals.Evaluate(Point);
             var error = Math.Max(Math.Max(_residuals.Primal, _residuals.Dual), _residuals.Gap);
@@ -71,13 +79,15 @@ internal sealed class InteriorPoint
                 return false;
             if (error < BestError)
             {
+                lastBetter = error < 0.9 * BestError ? Iterations : lastBetter;
                 BestError = error;
                 Point.CopyTo(Best);
             }
 
-            if (error <= _options.Tolerance)
+            if (error <= tolerance)
                 return true;
-            if (Iterations >= _options.MaxIterations || shortSteps >= ShortStepsInARow || error > 1e8 * Math.Max(BestError, 1e-6))
+            if (Iterations >= _options.MaxIterations || shortSteps >= ShortStepsInARow
+                || Iterations - lastBetter > PatienceIterations)
                 return false;
             var step = Advance();
             shortSteps = step < ShortStep ? shortSteps + 1 : 0;

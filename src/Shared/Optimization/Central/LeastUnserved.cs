@@ -36,14 +36,27 @@ internal sealed class LeastUnserved
     public static LeastUnserved Solve(
         NetworkProgram program, ReadOnlySpan<Block> blocks, ReadOnlySpan<double> demandMw, OptimumOptions options)
     {
+        var free = new Block[blocks.Length];
+        for (var k = 0; k < free.Length; k++)
+            free[k] = blocks[k] with { PricePerMwh = 0, SlopePerMw2h = 0 };
+        var placed = SolvePlaced(program, free, demandMw, options);
+        if (placed.Solution.Converged)
+            return placed;
+
+        // The small price difference makes the problem harder; without it only the total is certain, and that matters more.
+        var plain = program.SolveElastic(free, demandMw, 1, options);
+        return plain.Converged ? new LeastUnserved(program, plain, plain.ShedMw, plain.SpillMw) : placed;
+    }
+
+    private static LeastUnserved SolvePlaced(
+        NetworkProgram program, Block[] free, ReadOnlySpan<double> demandMw, OptimumOptions options)
+    {
         var buses = program.Graph.BusCount;
         var sources = new double[buses];
-        var all = new List<Block>(blocks.Length + (4 * buses));
-        foreach (var block in blocks)
-        {
+        var all = new List<Block>(free.Length + (4 * buses));
+        all.AddRange(free);
+        foreach (var block in free)
             sources[block.Bus] += Math.Max(0, block.UpperMw);
-            all.Add(block with { PricePerMwh = 0, SlopePerMw2h = 0 });
-        }
 
         for (var i = 0; i < buses; i++)
         {
@@ -60,12 +73,12 @@ internal sealed class LeastUnserved
         var spill = new double[buses];
         for (var i = 0; i < buses; i++)
         {
-            var first = blocks.Length + (4 * i);
+            var first = free.Length + (4 * i);
             shed[i] = solution.BlockMw[first] + solution.BlockMw[first + 1];
             spill[i] = -solution.BlockMw[first + 2] - solution.BlockMw[first + 3];
         }
 
-        return new LeastUnserved(program, solution with { BlockMw = solution.BlockMw[..blocks.Length] }, shed, spill);
+        return new LeastUnserved(program, solution with { BlockMw = solution.BlockMw[..free.Length] }, shed, spill);
     }
 
     public Infeasibility Explain(IslandBalance balance)

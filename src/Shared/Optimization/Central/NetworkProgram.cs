@@ -9,6 +9,9 @@ namespace Halfvoice.Optimization;
 /// </summary>
 public sealed class NetworkProgram
 {
+    private const double HopefulError = 1e-5;
+    private const double LeastTolerance = 1e-13;
+
     private readonly GridGraph _graph;
 
     /// <summary>Analyses a network; its generators play no part.</summary>
@@ -32,16 +35,24 @@ public sealed class NetworkProgram
         var program = new ScaledProgram(_graph, blocks, demandMw);
         var kkt = new KktSystem(program);
         var method = new InteriorPoint(program, kkt, options);
-        method.Run();
-        if (method.BestError < 1e-5)
+        Polish? polish = null;
+        for (var tolerance = options.Tolerance; ; tolerance *= 0.01)
         {
-            var polish = new Polish(program, kkt);
-            if (polish.Run(method.Best))
+            var reached = method.Run(tolerance);
+            if (method.BestError < HopefulError)
             {
-                var exact = SolutionReader.Read(program, blocks, demandMw, polish.Point, method.Iterations);
-                if (exact.Converged)
-                    return exact;
+                polish ??= new Polish(program, kkt);
+                if (polish.Run(method.Best))
+                {
+                    var exact = SolutionReader.Read(program, blocks, demandMw, polish.Point, method.Iterations);
+                    if (exact.Converged)
+                        return exact;
+                }
             }
+
+            // Near a degenerate optimum slack and multiplier part only later: go on a little and look again.
+            if (!reached || tolerance < LeastTolerance)
+                break;
         }
 
         return SolutionReader.Read(program, blocks, demandMw, method.Best, method.Iterations);

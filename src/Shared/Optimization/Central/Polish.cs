@@ -11,6 +11,7 @@ internal sealed class Polish
     private const int MaxGuesses = 6;
     private const int MaxSteps = 12;
     private const double Feasible = 1e-10;
+    private const double Consistent = 1e-6;
 
     private readonly ScaledProgram _program;
     private readonly KktSystem _kkt;
@@ -49,7 +50,8 @@ internal sealed class Polish
             Hold();
             _kkt.Factor(_weight);
             var error = Refine();
-            if (!double.IsFinite(error))
+            // A large error means that the held bounds contradict each other; what follows from them says nothing about the rest.
+            if (!(error <= Consistent))
                 return false;
             if (!CorrectGuess())
                 return error <= Feasible;

@@ -79,7 +79,7 @@ internal sealed class ScaledProgram
     /// <summary>Items before this index are blocks.</summary>
     public int FreeCount { get; }
 
-    /// <summary>Items from <see cref="FreeCount"/> to here are limited lines; from here to <see cref="Count"/> lines held at zero.</summary>
+    /// <summary>Items from <see cref="FreeCount"/> to here are limited lines; from here to the end lines held at zero.</summary>
     public int LimitedEnd { get; }
 
     /// <summary>Number of items.</summary>

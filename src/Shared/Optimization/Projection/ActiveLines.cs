@@ -51,7 +51,13 @@ internal sealed class ActiveLines
         return wider;
     }
 
-    /// <summary>Takes a line in. Its products with the held lines, and what of its own is not explained by them, come from the caller.</summary>
+    /// <summary>Takes a line in.</summary>
+    /// <param name="line">Line index.</param>
+    /// <param name="side">+1 or −1.</param>
+    /// <param name="multiplier">Its signed multiplier.</param>
+    /// <param name="products">Products of its row with the rows of the held lines.</param>
+    /// <param name="own">Product of its row with itself.</param>
+    /// <param name="unexplained">The part of that product that the held rows do not explain, above 0.</param>
     public void Append(int line, double side, double multiplier, ReadOnlySpan<double> products, double own, double unexplained)
     {
         Reserve();

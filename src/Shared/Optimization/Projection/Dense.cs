@@ -3,7 +3,7 @@ using System.Runtime.Intrinsics;
 
 namespace Halfvoice.Optimization;
 
-/// <summary>Dense vector kernels in a fixed summation order, so that equal inputs give equal bits whatever the machine's vector width.</summary>
+/// <summary>Dense vector kernels; their fixed order of summation gives equal bits whatever the machine's vector width.</summary>
 internal static class Dense
 {
     public static double Dot(ReadOnlySpan<double> a, ReadOnlySpan<double> b)

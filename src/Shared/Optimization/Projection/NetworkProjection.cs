@@ -56,7 +56,7 @@ public sealed class NetworkProjection
         if (penaltyPerMw2h.Length != buses || free.Length != buses)
             throw new ArgumentException($"Penalties and free marks must be given for all {buses} buses.", nameof(penaltyPerMw2h));
         if (!(priceScalePerMwh > 0) || !double.IsFinite(priceScalePerMwh))
-            throw new ArgumentOutOfRangeException(nameof(priceScalePerMwh), priceScalePerMwh, "The price scale must be positive and finite.");
+            throw new ArgumentOutOfRangeException(nameof(priceScalePerMwh), priceScalePerMwh, "Must be positive and finite.");
         _graph = new GridGraph(network);
         _system = new SusceptanceSystem(_graph);
         _penalty = penaltyPerMw2h.ToArray();
@@ -70,7 +70,7 @@ public sealed class NetworkProjection
             if (!free[i])
                 continue;
             if (!(_penalty[i] > 0) || !double.IsFinite(_penalty[i]))
-                throw new ArgumentException($"The penalty at bus {network.Buses[i].Name} must be positive and finite.", nameof(penaltyPerMw2h));
+                throw new ArgumentException($"The penalty at {network.Buses[i].Name} must be positive and finite.", nameof(penaltyPerMw2h));
             freeBus.Add(i);
             rootWeight.Add(Math.Sqrt(1 / _penalty[i]));
             _islandWeight[_graph.IslandOf[i]] += 1 / _penalty[i];
@@ -218,7 +218,7 @@ public sealed class NetworkProjection
             flowMw[l] = _graph.SusceptanceMwPerRad[l] * (_angle[_graph.From[l]] - _angle[_graph.To[l]]);
     }
 
-    /// <summary>Multipliers for the held lines, G y = open flow − limit; lines with a multiplier of the wrong sign go, worst first.</summary>
+    /// <summary>Multipliers for the held lines, G y = open flow − limit; those with the wrong sign go, worst first.</summary>
     private void DropStale()
     {
         while (_active.Count > 0)

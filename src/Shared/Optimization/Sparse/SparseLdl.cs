@@ -28,19 +28,18 @@ internal sealed class SparseLdl
     public int ShiftedPivots { get; private set; }
 
     /// <summary>Factors the matrix given by its diagonal (by bus) and its off-diagonal values (by edge).</summary>
-    public void Factor(double[] diagonal, double[] edgeValue)
+    /// <param name="diagonal">By bus.</param>
+    /// <param name="edgeValue">By edge.</param>
+    /// <param name="rowSize">By bus, above 0: the size of what was summed up in its row, the yardstick for a pivot next to zero.</param>
+    public void Factor(double[] diagonal, double[] edgeValue, double[] rowSize)
     {
         ShiftedPivots = 0;
         _pattern.ColumnStart.AsSpan(0, _pattern.Count).CopyTo(_next);
         for (var k = 0; k < _pattern.Count; k++)
         {
-            var size = Math.Abs(diagonal[_pattern.Order[k]]);
+            var size = rowSize[_pattern.Order[k]];
             for (var t = _pattern.EntryStart[k]; t < _pattern.EntryStart[k + 1]; t++)
-            {
-                var value = edgeValue[_pattern.EntryEdge[t]];
-                _row[_pattern.EntryColumn[t]] = value;
-                size = Math.Max(size, Math.Abs(value));
-            }
+                _row[_pattern.EntryColumn[t]] = edgeValue[_pattern.EntryEdge[t]];
 
             var pivot = diagonal[_pattern.Order[k]];
             for (var t = _pattern.RowStart[k]; t < _pattern.RowStart[k + 1]; t++)
@@ -60,7 +59,7 @@ internal sealed class SparseLdl
             if (!(Math.Abs(pivot) > TinyPivot * size))
             {
                 ShiftedPivots++;
-                pivot = Math.CopySign(Math.Max(10 * TinyPivot * size, 1e-300), pivot);
+                pivot = Math.CopySign(10 * TinyPivot * size, pivot);
             }
 
             _pivot[k] = pivot;

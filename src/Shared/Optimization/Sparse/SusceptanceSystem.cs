@@ -4,7 +4,7 @@ namespace Halfvoice.Optimization;
 /// Angles from injections: B θ = x with B = Aᵀ diag(b) A, every island's first bus at angle 0. Factored once.
 /// </summary>
 /// <remarks>
-/// A typical susceptance is added to B at every reference bus. Where the injections of an island sum to zero this changes nothing: summing
+/// A susceptance is added to B at every reference bus, of the sign that B has there so that they cannot cancel. Where the injections of an island sum to zero this changes nothing: summing
 /// the island's rows leaves that susceptance times the reference angle equal to zero. Negative reactances can make B indefinite;
 /// every solution is then refined against B itself.
 /// </remarks>
@@ -15,7 +15,7 @@ internal sealed class SusceptanceSystem
     private readonly GridGraph _graph;
     private readonly SparseLdl _factor;
     private readonly bool _refine;
-    private readonly double _ground;
+    private readonly double[] _ground;
     private readonly double[] _residual;
     private readonly double[] _work;
     private readonly double[] _edge;
@@ -28,21 +28,28 @@ internal sealed class SusceptanceSystem
         _work = new double[graph.BusCount];
         _edge = new double[graph.EdgeA.Length];
         var diagonal = new double[graph.BusCount];
-        double size = 0;
+        var rowSize = new double[graph.BusCount];
         for (var l = 0; l < graph.LineCount; l++)
         {
             var b = graph.SusceptanceMwPerRad[l];
             diagonal[graph.From[l]] += b;
             diagonal[graph.To[l]] += b;
             _edge[graph.EdgeOfLine[l]] -= b;
-            size += Math.Abs(b);
+            rowSize[graph.From[l]] += Math.Abs(b);
+            rowSize[graph.To[l]] += Math.Abs(b);
             _refine |= b < 0;
         }
 
-        _ground = graph.LineCount == 0 ? 1 : size / graph.LineCount;
-        foreach (var bus in graph.ReferenceBus)
-            diagonal[bus] += _ground;
-        _factor.Factor(diagonal, _edge);
+        _ground = new double[graph.IslandCount];
+        for (var island = 0; island < _ground.Length; island++)
+        {
+            var bus = graph.ReferenceBus[island];
+            rowSize[bus] = rowSize[bus] > 0 ? rowSize[bus] : 1;
+            _ground[island] = Math.CopySign(rowSize[bus], diagonal[bus]);
+            diagonal[bus] += _ground[island];
+        }
+
+        _factor.Factor(diagonal, _edge, rowSize);
         _refine |= _factor.ShiftedPivots > 0;
     }
 
@@ -69,8 +76,8 @@ internal sealed class SusceptanceSystem
     private double Residual(ReadOnlySpan<double> injectionMw, ReadOnlySpan<double> angleRad)
     {
         injectionMw.CopyTo(_residual);
-        foreach (var bus in _graph.ReferenceBus)
-            _residual[bus] -= _ground * angleRad[bus];
+        for (var island = 0; island < _ground.Length; island++)
+            _residual[_graph.ReferenceBus[island]] -= _ground[island] * angleRad[_graph.ReferenceBus[island]];
         for (var e = 0; e < _edge.Length; e++)
         {
             int a = _graph.EdgeA[e], b = _graph.EdgeB[e];

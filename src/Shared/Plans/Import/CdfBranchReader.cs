@@ -9,12 +9,16 @@ namespace Halfvoice.Plans;
 /// </summary>
 internal static class CdfBranchReader
 {
-    private readonly record struct Branch(double Tap, double Other, double Type, double Resistance, double Reactance, double Rating, double Ratio, double Shift)
+    private readonly record struct Branch(
+        double Tap, double Other, double Type, double Resistance, double Reactance, double Rating, double Ratio, double Shift)
     {
         public bool IsTransformer => Type is 1 or 2 or 3 || Ratio is not (0 or 1);
 
         public bool Shifts => Type == 4 || Shift != 0;
     }
+
+    private const string UnreadableRule =
+        "cannot be read: a branch is two bus numbers, area, zone, circuit, type, R, X, B and three ratings";
 
     /// <summary>What the DC model leaves out, counted for the warnings.</summary>
     private sealed class Tally
@@ -56,7 +60,7 @@ internal static class CdfBranchReader
     {
         if ((ByColumn(row, draft) ?? ByOrder(row)) is not { } branch)
         {
-            problems.Add(row.Line, 1, null, null, "cannot be read: a branch is two bus numbers, area, zone, circuit, type, R, X, B and three ratings");
+            problems.Add(row.Line, 1, null, null, UnreadableRule);
             return;
         }
 
@@ -67,11 +71,11 @@ internal static class CdfBranchReader
         if (a == b)
             problems.Add(row.Line, 6, "second bus", draft.Buses[b].Name, "must not be the bus that the branch starts from");
         else if (GridRules.BrokenReactance(branch.Reactance) is { } broken)
-            problems.Add(row.Line, 30, "reactance", branch.Reactance.ToString("R", CultureInfo.InvariantCulture), broken);
+            problems.Add(row.Line, 30, "reactance", Quantity.Number(branch.Reactance), broken);
         else if (GridRules.Resistance.Broken(branch.Resistance) is { } resistance)
-            problems.Add(row.Line, 20, "resistance", branch.Resistance.ToString("R", CultureInfo.InvariantCulture), resistance);
+            problems.Add(row.Line, 20, "resistance", Quantity.Number(branch.Resistance), resistance);
         else if (branch.Rating < 0 || branch.Rating > GridRules.Limit.Most)
-            problems.Add(row.Line, 51, "rating", branch.Rating.ToString("R", CultureInfo.InvariantCulture), "must not be negative, nor above 10,000,000");
+            problems.Add(row.Line, 51, "rating", Quantity.Number(branch.Rating), "must not be negative, nor above 10,000,000");
         else
             draft.Lines.Add(Take(branch, a, b, draft, tally, named));
     }
@@ -82,21 +86,26 @@ internal static class CdfBranchReader
         tally.Transformers += branch.IsTransformer ? 1 : 0;
         tally.Shifters += branch.Shifts ? 1 : 0;
         var circuit = named[(from, to)] = named.GetValueOrDefault((from, to)) + 1;
-        var name = $"{draft.Buses[from].Name}-{draft.Buses[to].Name}" + (circuit == 1 ? "" : string.Create(CultureInfo.InvariantCulture, $"-{circuit}"));
-        return new Line(name, from, to, branch.Reactance, branch.Rating == 0 ? double.PositiveInfinity : branch.Rating, branch.Resistance);
+        var name = $"{draft.Buses[from].Name}-{draft.Buses[to].Name}";
+        if (circuit > 1)
+            name += string.Create(CultureInfo.InvariantCulture, $"-{circuit}");
+        var limitMw = branch.Rating == 0 ? double.PositiveInfinity : branch.Rating;
+        return new Line(name, from, to, branch.Reactance, limitMw, branch.Resistance);
     }
 
     private static void Warn(FileProblems problems, GridDraft draft, Tally tally)
     {
-        var culture = CultureInfo.InvariantCulture;
+        var (all, rated) = (draft.Lines.Count, draft.Lines.Count - tally.Unrated);
         if (tally.Unrated > 0)
-            problems.Warn(null, string.Create(culture, $"gives no rating for {tally.Unrated} of {draft.Lines.Count} branches (0 means not given): they are left without a limit: fill in limit_mw where there is one"));
-        if (tally.Unrated < draft.Lines.Count)
-            problems.Warn(null, string.Create(culture, $"rates {draft.Lines.Count - tally.Unrated} branches in MVA: taken as limits in MW"));
+            Say($"gives no rating for {tally.Unrated} of {all} branches (0 means not given): they are left without a limit: fill in limit_mw where there is one");
+        if (rated > 0)
+            Say($"rates {rated} branches in MVA: taken as limits in MW");
         if (tally.Transformers > 0)
-            problems.Warn(null, string.Create(culture, $"has {tally.Transformers} transformers: the DC model ignores their tap ratios"));
+            Say($"has {tally.Transformers} transformers: the DC model ignores their tap ratios");
         if (tally.Shifters > 0)
-            problems.Warn(null, string.Create(culture, $"has {tally.Shifters} phase shifters: their shift is ignored, so real flows will differ"));
+            Say($"has {tally.Shifters} phase shifters: their shift is ignored, so real flows will differ");
+
+        void Say(FormattableString message) => problems.Warn(null, message.ToString(CultureInfo.InvariantCulture));
     }
 
     private static int? BusOf(double number, int line, int column, FileProblems problems, GridDraft draft)
@@ -112,9 +121,11 @@ internal static class CdfBranchReader
     private static Branch? ByColumn(CdfRow row, GridDraft draft)
     {
         var branch = new Branch(
-            row.Number(1, 4), row.Number(6, 9), row.Number(19, 19), row.Number(20, 29), row.Number(30, 40), row.Number(51, 55), row.Number(77, 82), row.Number(84, 90));
-        var known = Array.TrueForAll([branch.Tap, branch.Other], number => draft.BusAt.ContainsKey(number.ToString("0", CultureInfo.InvariantCulture)));
-        return known && IsSound(branch) ? branch : null;
+            row.Number(1, 4), row.Number(6, 9), row.Number(19, 19), row.Number(20, 29), row.Number(30, 40),
+            row.Number(51, 55), row.Number(77, 82), row.Number(84, 90));
+        return IsKnown(branch.Tap) && IsKnown(branch.Other) && IsSound(branch) ? branch : null;
+
+        bool IsKnown(double number) => draft.BusAt.ContainsKey(number.ToString("0", CultureInfo.InvariantCulture));
     }
 
     private static Branch? ByOrder(CdfRow row)

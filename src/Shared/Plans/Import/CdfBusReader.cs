@@ -6,10 +6,13 @@ namespace Halfvoice.Plans;
 /// <summary>What an import keeps of a bus row.</summary>
 internal readonly record struct CdfBus(string Number, double LoadMw, double GenerationMw);
 
-/// <summary>Reads the bus section: number 1–4, name 6–17, area 19–20, type 25–26, voltage 28–33, load 41–49, generation 60–67.</summary>
+/// <summary>Reads the bus section: number 1–4, name 6–17, area 19–20, type 25–26, voltage 28–33, load 41–49 and so on.</summary>
 internal static class CdfBusReader
 {
     private const double LargestNumber = 1e9;
+
+    private const string UnreadableRule =
+        "cannot be read: after the name come area, zone, type 0 to 3, voltage, angle, load MW and MVAR, generation MW and MVAR";
 
     public static List<CdfBus> Read(string[] lines, CdfSections sections, ImportSites sitesBy, FileProblems problems, GridDraft draft)
     {
@@ -58,9 +61,9 @@ internal static class CdfBusReader
             return;
         }
 
-        var fields = ByColumn(row) is { } columns ? columns : ByOrder(row);
-        if (fields is not { } found)
-            problems.Add(row.Line, 19, null, null, "cannot be read: after the name come area, zone, type 0 to 3, voltage, angle, load MW and MVAR, generation MW and MVAR");
+        var fields = ByColumn(row) ?? ByOrder(row);
+        if (fields is null)
+            problems.Add(row.Line, 19, null, null, UnreadableRule);
         var (area, loadMw, generationMw) = fields ?? default;
         var site = sitesBy == ImportSites.Bus ? "bus-" + name : "area-" + area.ToString("0", CultureInfo.InvariantCulture);
         draft.Sites.TryAdd(site, (site, row.Line));

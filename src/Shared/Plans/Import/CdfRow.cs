@@ -34,11 +34,19 @@ internal readonly record struct CdfRow(string Text, int Line)
         return [.. Text[(firstColumn - 1)..].Split([' ', '\t'], StringSplitOptions.RemoveEmptyEntries).Select(word => Parse(word))];
     }
 
-    public string Words(int first, int last) =>
-        Text.Length < first ? "" : string.Join(' ', Text[(first - 1)..Math.Min(last, Text.Length)].Split(' ', StringSplitOptions.RemoveEmptyEntries));
+    /// <summary>The words in some columns with single blanks between them.</summary>
+    public string Words(int first, int last)
+    {
+        if (Text.Length < first)
+            return "";
+        var words = Text[(first - 1)..Math.Min(last, Text.Length)].Split(' ', StringSplitOptions.RemoveEmptyEntries);
+        return string.Join(' ', words);
+    }
 
     private static bool IsBlank(char character) => character is ' ' or '\t';
 
     private static double Parse(ReadOnlySpan<char> text) =>
-        double.TryParse(text, NumberStyles.Float, CultureInfo.InvariantCulture, out var value) && double.IsFinite(value) ? value : double.NaN;
+        double.TryParse(text, NumberStyles.Float, CultureInfo.InvariantCulture, out var value) && double.IsFinite(value)
+            ? value
+            : double.NaN;
 }

@@ -38,7 +38,9 @@ internal sealed record CdfSections(Range Buses, Range Branches)
     {
         var words = header.Split(' ', StringSplitOptions.RemoveEmptyEntries);
         var items = Array.FindIndex(words, word => word.StartsWith("ITEM", StringComparison.OrdinalIgnoreCase));
-        if (items > 0 && int.TryParse(words[items - 1], NumberStyles.None, CultureInfo.InvariantCulture, out var said) && said != end - start - 1)
-            problems.Warn(start + 1, string.Create(CultureInfo.InvariantCulture, $"announces {said} items, but {end - start - 1} rows follow"));
+        var rows = end - start - 1;
+        if (items <= 0 || !int.TryParse(words[items - 1], NumberStyles.None, CultureInfo.InvariantCulture, out var said) || said == rows)
+            return;
+        problems.Warn(start + 1, string.Create(CultureInfo.InvariantCulture, $"announces {said} items, but {rows} rows follow"));
     }
 }

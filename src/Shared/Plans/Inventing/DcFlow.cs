@@ -115,7 +115,9 @@ internal sealed class DcFlow
         }
     }
 
-    /// <summary>Pivots of M = (P + L) P⁻¹ (P + Lᵀ), L the strict lower part: p_i = d_i − Σ_{j&lt;i} w_ij² / p_j, kept away from zero.</summary>
+    /// <summary>
+    /// Pivots of M = (P + L) P⁻¹ (P + Lᵀ), L the strict lower part: p_i = d_i − Σ_{j&lt;i} w_ij² / p_j, kept away from zero.
+    /// </summary>
     private double[] Factor()
     {
         var pivot = new double[_buses];

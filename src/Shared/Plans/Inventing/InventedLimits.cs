@@ -112,7 +112,7 @@ internal sealed class InventedLimits
         return false;
     }
 
-    /// <summary>The two plants whose exchange relieves the line most per MW, each using at most half of the room that it has left.</summary>
+    /// <summary>The two plants whose exchange relieves the line most per MW; each uses at most half of the room that it has left.</summary>
     private (int Up, int Down, double MostMw, double Gain)? Swap(double[] effect, int direction)
     {
         var (up, down) = (-1, -1);
@@ -134,7 +134,7 @@ internal sealed class InventedLimits
 
     private double RoomDown(int plant) => 0.5 * (_shifted[plant] - _network.Generators[plant].MinMw);
 
-    /// <summary>The shifted dispatch of the first snapshot carried over to another load, each plant moving by its share of the room.</summary>
+    /// <summary>The shifted dispatch carried over to another load, each plant moving by its share of the room.</summary>
     private double[] Follow(double[] loadMw)
     {
         var change = loadMw.Sum() - _loadMw[0].Sum();

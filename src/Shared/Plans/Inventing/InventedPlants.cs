@@ -71,7 +71,8 @@ internal static class InventedPlants
         {
             case Kind.Rising:
                 var minMw = numbers.Unit() < 0.25 ? Math.Round(0.15 * maxMw) : 0;
-                return new Generator(name, bus, minMw, maxMw, Slope(numbers.Between(8, 30), maxMw), Math.Round(numbers.Between(14, 38), 2), fixedCost);
+                var steep = Slope(numbers.Between(8, 30), maxMw);
+                return new Generator(name, bus, minMw, maxMw, steep, Math.Round(numbers.Between(14, 38), 2), fixedCost);
             case Kind.Flat:
                 return new Generator(name, bus, 0, maxMw, 0, Math.Round(20 + (55 * place), 4), fixedCost);
             case Kind.Weather:
@@ -79,7 +80,8 @@ internal static class InventedPlants
             case Kind.River:
                 return new Generator(name, bus, maxMw, maxMw, 0, 0);
             default:
-                return new Generator(name, bus, -maxMw, maxMw, Slope(numbers.Between(4, 10), maxMw), Math.Round(numbers.Between(30, 42), 2));
+                var gentle = Slope(numbers.Between(4, 10), maxMw);
+                return new Generator(name, bus, -maxMw, maxMw, gentle, Math.Round(numbers.Between(30, 42), 2));
         }
     }
 

@@ -25,7 +25,13 @@ internal static class InventedSettings
         {
             Name = name,
             Cycles = 3,
-            Stop = new StopSettings { MismatchFraction = 0.02, PriceMovePerMwh = 0.5, RoundCap = rounds, ReferenceLoadMw = 10 * Math.Ceiling(loadMw / 10) },
+            Stop = new StopSettings
+            {
+                MismatchFraction = 0.02,
+                PriceMovePerMwh = 0.5,
+                RoundCap = rounds,
+                ReferenceLoadMw = 10 * Math.Ceiling(loadMw / 10),
+            },
             Privacy = new PrivacySettings { AdjacencyMw = AdjacencyMw, Epsilon = epsilon, Stated = true },
             Links = new LinkPlan { Default = LinkProfiles.ByName["lte"] },
             Accept = new AcceptSettings

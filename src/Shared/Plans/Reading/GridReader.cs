@@ -77,8 +77,8 @@ internal static class GridReader
                 sheet.Reject(name, TwiceRule(draft, bus, owner));
             if (GridRules.BrokenSite(owner) is { } unsafeName)
                 sheet.Reject(site, unsafeName);
-            else if (!draft.Sites.TryAdd(owner, (owner, sheet.Line)) && draft.Sites[owner].Name != owner)
-                sheet.Reject(site, $"differs only in case from site '{draft.Sites[owner].Name}' in line {draft.Sites[owner].Line}: use one spelling");
+            else if (!draft.Sites.TryAdd(owner, (owner, sheet.Line)) && draft.Sites[owner] is var first && first.Name != owner)
+                sheet.Reject(site, $"differs only in case from site '{first.Name}' in line {first.Line}: use one spelling");
             var text = sheet.Text(label);
             draft.Buses.Add(new Bus(
                 bus,
@@ -99,7 +99,8 @@ internal static class GridReader
         var other = index >= 0 && index < draft.Buses.Count ? draft.Buses[index].Site : site;
         return other == site
             ? $"is there twice, first in line {line}: a bus is listed once"
-            : $"is given to site '{PlanError.Quotable(site)}' here and to site '{PlanError.Quotable(other)}' in line {line}: a bus has one site";
+            : $"is given to site '{PlanError.Quotable(site)}' here and to site '{PlanError.Quotable(other)}' in line {line}: "
+            + "a bus has one site";
     }
 
     private static void ReadLines(IPlanFiles files, FileProblems problems, GridDraft draft)

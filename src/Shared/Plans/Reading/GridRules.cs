@@ -41,7 +41,9 @@ internal static class GridRules
             && site.All(character => char.IsAsciiLetterOrDigit(character) || character is '.' or '_' or '-')
             && char.IsAsciiLetterOrDigit(site[0])
             && site[^1] != '.';
-        return safe ? null : "must be 1 to 63 letters, digits, '.', '_' or '-', start with a letter or digit and not end with '.': it names files";
+        return safe
+            ? null
+            : "must be 1 to 63 letters, digits, '.', '_' or '-', start with a letter or digit and not end with '.': it names files";
     }
 
     /// <summary>The rule that a reactance breaks, or null.</summary>

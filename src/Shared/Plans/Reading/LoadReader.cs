@@ -14,10 +14,12 @@ internal static class LoadReader
     public static Dictionary<string, LoadSeries> Read(IPlanFiles files, IEnumerable<string> names, GridDraft draft, PlanProblems problems)
     {
         var loads = new Dictionary<string, LoadSeries>(StringComparer.Ordinal);
-        var busesOf = draft.Buses.Select((bus, index) => (bus, index)).ToLookup(pair => pair.bus.Site, pair => pair.index, StringComparer.Ordinal);
+        var busesOf = draft.Buses.Select((bus, index) => (bus.Site, index))
+            .ToLookup(pair => pair.Site, pair => pair.index, StringComparer.Ordinal);
         var fileOf = new Dictionary<string, string>(StringComparer.OrdinalIgnoreCase);
         (string File, LoadSeries Series)? timed = null;
-        foreach (var name in names.Where(name => name.StartsWith(PlanFileRules.LoadFolder, StringComparison.Ordinal)).Order(StringComparer.Ordinal))
+        var own = names.Where(name => name.StartsWith(PlanFileRules.LoadFolder, StringComparison.Ordinal));
+        foreach (var name in own.Order(StringComparer.Ordinal))
         {
             if (problems.IsFull)
                 break;
@@ -59,7 +61,8 @@ internal static class LoadReader
         if (!draft.Sites.TryGetValue(site, out var known))
         {
             if (draft.BusesAreComplete)
-                problems.Whole($"belongs to no site of {PlanFileRules.Buses}" + NearestName.Hint(site, draft.Sites.Values.Select(entry => entry.Name)));
+                problems.Whole($"belongs to no site of {PlanFileRules.Buses}"
+                    + NearestName.Hint(site, draft.Sites.Values.Select(entry => entry.Name)));
             return null;
         }
 
@@ -120,7 +123,9 @@ internal static class LoadReader
         if (!draft.BusAt.TryGetValue(name, out var found))
         {
             if (draft.BusesAreComplete)
-                sheet.Reject(BusColumn, name.Length == 0 ? "must not be blank: it needs the name of a bus" : "must be a bus of grid/buses.csv");
+                sheet.Reject(BusColumn, name.Length == 0
+                    ? "must not be blank: it needs the name of a bus"
+                    : "must be a bus of grid/buses.csv");
             return null;
         }
 

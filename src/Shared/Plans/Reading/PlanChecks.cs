@@ -31,18 +31,21 @@ internal static class PlanChecks
             var plants = island.SelectMany(network.GeneratorsAt).Select(index => network.Generators[index]).ToArray();
             var (least, most) = (plants.Sum(plant => plant.MinMw), plants.Sum(plant => plant.MaxMw));
             var slack = 1e-6 * (1 + Math.Abs(least) + Math.Abs(most));
+            var names = GridRules.BusNames(network, island);
             if (plants.Length == 0 && ranges[i].HasLoad)
                 problems.In(linesFile).Whole(
-                    $"leaves an island with load but without a generator: buses {GridRules.BusNames(network, island)}: join it to the rest, or give it a generator");
+                    $"leaves an island with load but without a generator: buses {names}: join it to the rest, or give it a generator");
             else if (islands.Count > 1 && (ranges[i].Least < least - slack || ranges[i].Most > most + slack))
                 problems.In(linesFile).Whole(
-                    $"leaves an island whose generators cannot meet its load: buses {GridRules.BusNames(network, island)}: join it to the rest, or change its generators");
+                    $"leaves an island whose generators cannot meet its load: buses {names}: join it to the rest, or change its generators");
         }
 
-        if (islands.Count > 1)
-            problems.Warn(linesFile, null, string.Create(
-                CultureInfo.InvariantCulture,
-                $"leaves {islands.Count} islands, each of which balances by itself; the smallest is {GridRules.BusNames(network, islands.MinBy(island => island.Length)!)}"));
+        if (islands.Count == 1)
+            return;
+        var smallest = GridRules.BusNames(network, islands.MinBy(island => island.Length)!);
+        problems.Warn(linesFile, null, string.Create(
+            CultureInfo.InvariantCulture,
+            $"leaves {islands.Count} islands, each of which must balance by itself; the smallest is {smallest}"));
     }
 
     /// <summary>Least and most total load of each island over all snapshots, and whether any of its buses has load.</summary>
@@ -71,7 +74,8 @@ internal static class PlanChecks
         if (plan.Accept.SettleWithin is { } within && within > plan.Interval)
             problems.Warn(PlanFileRules.Yaml, null, "accept.settle_within is longer than the interval: the dispatch may come too late");
         if (plan.Rounds.Deadline >= plan.Interval)
-            problems.Warn(PlanFileRules.Yaml, null, "rounds.deadline is not shorter than the interval: one late site can hold up a whole cycle");
+            problems.Warn(PlanFileRules.Yaml, null,
+                "rounds.deadline is not shorter than the interval: one late site can hold up a whole cycle");
         if (plan.Loads.Values.FirstOrDefault(series => series.Times.Count > 1) is not { } timed)
             return;
         for (var i = 1; i < timed.Times.Count; i++)
@@ -81,14 +85,17 @@ internal static class PlanChecks
             if (after.Instant - before.Instant == plan.Interval)
                 continue;
             problems.Warn(PlanFileRules.LoadFolder, null,
-                $"the times {timed.Times[i - 1]} and {timed.Times[i]} are not one interval ({Quantity.Duration(plan.Interval)}) apart: cycles take the snapshots in order whatever their times");
+                $"the times {timed.Times[i - 1]} and {timed.Times[i]} are not one interval ({Quantity.Duration(plan.Interval)}) apart: "
+                + "cycles take the snapshots in order whatever their times");
             return;
         }
     }
 
     private static void WarnOfLoads(Plan plan, PlanProblems problems)
     {
-        if (plan.Loads.Values.All(series => Enumerable.Range(1, series.Count).All(cycle => series.At(cycle).All(load => load == 0))))
+        var isIdle = plan.Loads.Values.All(series =>
+            Enumerable.Range(1, series.Count).All(cycle => series.At(cycle).All(load => load == 0)));
+        if (isIdle)
             problems.Warn(PlanFileRules.LoadFolder, null, "every load is 0 MW");
     }
 }

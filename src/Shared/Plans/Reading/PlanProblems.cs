@@ -20,7 +20,11 @@ internal sealed class PlanProblems
 
     public PlanReading ToReading(Plan? plan) => new(
         _errors.Count == 0 ? plan : null,
-        [.. _errors.OrderBy(error => error.File, StringComparer.Ordinal).ThenBy(error => error.Line ?? 0).ThenBy(error => error.Column ?? 0)],
+        [
+            .. _errors.OrderBy(error => error.File, StringComparer.Ordinal)
+                .ThenBy(error => error.Line ?? 0)
+                .ThenBy(error => error.Column ?? 0),
+        ],
         _warnings);
 }
 

@@ -91,7 +91,7 @@ internal sealed class SettingsReader
     {
         if (value is not YamlMap map)
         {
-            _problems.Add(value.Line, value.Column, shown, null, "must have keys of its own: " + string.Join(", ", KeysUnder(path + ".")));
+            NeedsKeys(value, path, shown);
             return;
         }
 
@@ -127,9 +127,12 @@ internal sealed class SettingsReader
             if (entry is YamlMap link)
                 Section(link, AnySite + ".", shown + ".");
             else
-                _problems.Add(entry.Line, entry.Column, shown, null, "must have keys of its own: " + string.Join(", ", KeysUnder(AnySite + ".")));
+                NeedsKeys(entry, AnySite, shown);
         }
     }
+
+    private void NeedsKeys(YamlPart value, string path, string shown) => _problems.Add(
+        value.Line, value.Column, shown, null, "must have keys of its own: " + string.Join(", ", KeysUnder(path + ".")));
 
     private void Faults(YamlPart value)
     {

@@ -58,9 +58,11 @@ internal sealed class SnapshotList(int buses)
             {
                 if (snapshot.Gives(bus) == _all[0].Gives(bus) || problems.IsFull)
                     continue;
-                problems.Add(snapshot.Line, null, null, null, _all[0].Gives(bus)
-                    ? $"starts a snapshot without bus '{PlanError.Quotable(names[bus])}', which the first snapshot has: every snapshot lists the same buses"
-                    : $"starts a snapshot with bus '{PlanError.Quotable(names[bus])}', which the first snapshot has not: every snapshot lists the same buses");
+                var name = PlanError.Quotable(names[bus]);
+                var difference = _all[0].Gives(bus)
+                    ? $"without bus '{name}', which the first snapshot has"
+                    : $"with bus '{name}', which the first snapshot has not";
+                problems.Add(snapshot.Line, null, null, null, $"starts a snapshot {difference}: every snapshot lists the same buses");
             }
         }
     }

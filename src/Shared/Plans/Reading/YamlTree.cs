@@ -56,7 +56,8 @@ internal sealed class YamlTree
             // The start is that of the last token understood; the end is where the parser stumbled.
             problems.Add((int)wrong.End.Line, (int)wrong.End.Column, null, null, "is not valid YAML: " + PlanError.Quotable(wrong.Message));
         }
-        catch (Exception wrong) when (wrong is InvalidOperationException or ArgumentException or IndexOutOfRangeException or FormatException)
+        catch (Exception wrong) when (wrong is InvalidOperationException or ArgumentException or IndexOutOfRangeException
+            or FormatException)
         {
             // On some malformed texts the scanner of the library fails an assertion of its own instead of saying where.
             problems.Add(tree._line, null, null, null, "is not valid YAML: the text after this line cannot be understood");

@@ -24,20 +24,25 @@ public static class AngleSensitivity
         ArgumentOutOfRangeException.ThrowIfNegative(enumerateUpTo);
         ArgumentOutOfRangeException.ThrowIfGreaterThan(enumerateUpTo, 24);
         Adjacency.Check(adjacencyMw);
-        var price = UnservedPriceBound(shape, adjacencyMw);
+        var price = UnservedPriceOnly(shape, adjacencyMw);
         if (AngleBranch.Of(shape) is not { } branches)
             return price;
         var sets = shape.OwnBuses == 1
             ? OneBusAngleBound.For(shape, branches, adjacencyMw, enumerateUpTo)
-            : null;
+            : AreaAngleBound.For(shape, branches, adjacencyMw);
         return SensitivityBound.Least(price, sets);
     }
 
     /// <summary>
-    /// ‖Δθ‖²_W ≤ Δν·Δd with every price ν between −V and V, so ‖Δθ‖₁ ≤ √(Σ 1/w) · √(2 V · adjacency).
+    /// The bound that holds for a site of any size: ‖Δθ‖²_W ≤ Δν·Δd with every price ν between −V and V, so
+    /// ‖Δθ‖₁ ≤ √(Σ 1/w) · √(2 V · adjacency). Proof: <c>angle.proof.md</c>, part 3.
     /// </summary>
-    internal static SensitivityBound UnservedPriceBound(AngleSiteShape shape, double adjacencyMw)
+    /// <param name="shape">The site.</param>
+    /// <param name="adjacencyMw">The load change that must stay hidden, L1, MW, above 0.</param>
+    public static SensitivityBound UnservedPriceOnly(AngleSiteShape shape, double adjacencyMw)
     {
+        ArgumentNullException.ThrowIfNull(shape);
+        Adjacency.Check(adjacencyMw);
         var spread = shape.CopyWeights.Where(weight => weight > 0).Sum(weight => 1 / weight);
         var l1 = Math.Sqrt(spread) * Math.Sqrt(2 * shape.UnservedPricePerMwh * adjacencyMw);
         return new SensitivityBound(l1 * RoundingAllowance, SensitivityMethod.UnservedPrice);

@@ -55,8 +55,6 @@ public sealed class PerRoundMechanism : IAnswerMechanism, IDisposable
                 draw[i] = DiscreteLaplace.Draw(_noise, _calibration.ScaleSteps);
             _ready.Enqueue(draw);
         }
-
-        _noise.Wipe();
     }
 
     /// <inheritdoc/>
