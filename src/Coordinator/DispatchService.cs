@@ -8,6 +8,8 @@ namespace Halfvoice.Coordinator;
 /// <summary>The gRPC face: proves who calls, checks what comes in, and hands it to the host's queue.</summary>
 internal sealed class DispatchService : V1.Dispatch.DispatchBase
 {
+    private static readonly TimeSpan HangUpGrace = TimeSpan.FromSeconds(5);
+
     private readonly DispatchHost _host;
     private readonly CallerIdentity _identity;
 
@@ -28,17 +30,22 @@ internal sealed class DispatchService : V1.Dispatch.DispatchBase
         var read = ReadAllAsync(stream, requestStream, context.CancellationToken);
         try
         {
-            // Whichever ends first ends the stream: the site hung up, or we have nothing more to say to it.
+            // Whichever ends first ends the stream: the site hung up, or we have nothing more to say to it. In the second case the
+            // site gets a moment to read to the end and hang up, because returning at once would cut off what is under way.
             var first = await Task.WhenAny(write, read).ConfigureAwait(false);
             if (first == read)
             {
                 stream.Complete();
                 await write.ConfigureAwait(false);
             }
+            else
+            {
+                await read.WaitAsync(HangUpGrace, context.CancellationToken).ConfigureAwait(false);
+            }
 
             await first.ConfigureAwait(false);
         }
-        catch (Exception failure) when (failure is OperationCanceledException or IOException or InvalidOperationException)
+        catch (Exception failure) when (failure is OperationCanceledException or IOException or InvalidOperationException or TimeoutException)
         {
             // The connection is gone; that the site left is all there is to say, and it is said below.
         }

@@ -59,7 +59,7 @@ internal static class CheckCommand
         yield return ("settled when", Text($"mismatch at most {preview.MismatchLimitMw:0.00} MW ({100 * plan.Stop.MismatchFraction:0.##} % of {preview.ReferenceLoadMw:0} MW) and price move at most {plan.Stop.PriceMovePerMwh:0.###} $/MWh, or what noise leaves"));
         yield return ("rounds expected", Text($"{preview.TrialRounds} (trial of cycle 1 in this process, {preview.TrialEnd}); cap {plan.Stop.RoundCap}"));
         yield return ("trial's score", Text($"cost gap {100 * preview.TrialScore.CostGap:0.000} %, reserve {preview.TrialScore.ReserveMw:0.00} MW, worst loading {100 * preview.TrialScore.WorstLoading:0.0} %"));
-        yield return ("noise floor", Text($"mismatch {preview.TrialMeasure.MismatchFloorMw:0.00} MW, price move {preview.TrialMeasure.PriceFloorPerMwh:0.000} $/MWh at the last round"));
+        yield return ("noise floor", Text($"mismatch {preview.TrialMeasure.MismatchFloorMw:0.00} MW, price move {preview.TrialMeasure.PriceFloorPerMwh:0.000} $/MWh at the round cap"));
         yield return ("bytes a round", Text($"{preview.BytesPerRound:0} for all sites, both directions"));
         yield return ("slowest link", Text($"{preview.SlowestSite}: round trip {preview.SlowestLink.RoundTrip.TotalMilliseconds:0} ms, jitter {preview.SlowestLink.Jitter.TotalMilliseconds:0} ms; {preview.TrialRounds} rounds take {preview.LinkSeconds:0.0} s or more"));
         yield return ("limit to settle", Text($"{AcceptanceJudge.SettleWithinSeconds(plan):0.#} s of an interval of {plan.Interval.TotalSeconds:0} s"));

@@ -7,10 +7,13 @@ namespace Halfvoice.Coordination;
 /// values.
 /// </summary>
 /// <remarks>
-/// Noise floor. A mean of m rounds of fresh Laplace noise of scale b has standard deviation b √(2/m) and, near enough
-/// normal, mean absolute value b · 2/√(π m) ≈ 1.13 b/√m; residuals of the relaxed iteration carry at most about 1.5 times
-/// the noise of one answer. The sum over components then lies below its mean plus two standard deviations in about 98 % of
-/// rounds. The largest price move of N components follows the Laplace tail, ρ b (ln N + 2), over m rounds.
+/// Noise floor. Summed over m rounds the residuals telescope: u grows by ρ (x̂ − z) each round, so the mean residual is the
+/// change of u over m rounds divided by ρ m, and the mean price move is the change of z likewise. Once a cycle has settled, u
+/// and z only fluctuate, with a spread of the order of one answer's noise, so both means fall like 1/m. The floors are those
+/// of the round cap's window, m = half the cap: what averaging could reach at best. Constants: Σ over components of 1.13 b
+/// (mean absolute value of a difference of two near-normal values of scale b, halved) plus two standard deviations, and the
+/// tail ρ b (ln N + 2) of the largest of N; both times 1.5 for what relaxation and projection add. A test holds the floors to
+/// being met at the cap by at least 95 % of settled cycles.
 /// </remarks>
 public sealed class ConvergenceTrail
 {
@@ -31,7 +34,8 @@ public sealed class ConvergenceTrail
 
     /// <summary>Starts a cycle.</summary>
     /// <param name="noiseScale">Declared noise scale by component, MW or rad.</param>
-    public void Begin(ReadOnlySpan<double> noiseScale)
+    /// <param name="roundCap">Most rounds of the cycle.</param>
+    public void Begin(ReadOnlySpan<double> noiseScale, int roundCap)
     {
         _rounds = 0;
         _residual.Clear();
@@ -51,8 +55,9 @@ public sealed class ConvergenceTrail
         }
 
         _noisy = count > 0;
-        _floorMw = NoiseGain * ((1.13 * sum) + (2 * 0.85 * Math.Sqrt(squares)));
-        _priceFloor = NoiseGain * price * (Math.Log(Math.Max(1, count)) + 2);
+        var m = (roundCap + 1) / 2;
+        _floorMw = NoiseGain * ((1.13 * sum) + (2 * 0.85 * Math.Sqrt(squares))) / m;
+        _priceFloor = NoiseGain * price * (Math.Log(Math.Max(1, count)) + 2) / m;
     }
 
     /// <summary>Adds a closed round.</summary>
@@ -69,7 +74,7 @@ public sealed class ConvergenceTrail
         for (var k = 0; k < now.Length; k++)
             mismatch += Math.Abs(now[k] - then[k]) / m;
         var move = PriceMove(consensus, ConsensusAt(_rounds - m), m);
-        return new RoundMeasure(mismatch, move, _floorMw / Math.Sqrt(m), _priceFloor / m, m);
+        return new RoundMeasure(mismatch, move, _floorMw, _priceFloor, m);
     }
 
     /// <summary>Mean consensus and dual over the window; the last ones without noise.</summary>

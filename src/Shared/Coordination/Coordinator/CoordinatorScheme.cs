@@ -9,6 +9,7 @@ namespace Halfvoice.Coordination;
 public abstract class CoordinatorScheme
 {
     private readonly double _relaxation;
+    private readonly int _roundCap;
     private readonly bool[] _known;
     private readonly double[] _mixed;
     private readonly double[] _before;
@@ -17,6 +18,7 @@ public abstract class CoordinatorScheme
     {
         Map = new ComponentMap(setup);
         _relaxation = setup.Relaxation;
+        _roundCap = setup.RoundCap;
         Value = new double[Map.Count];
         Consensus = new double[Map.Count];
         Dual = new double[Map.Count];
@@ -58,7 +60,7 @@ public abstract class CoordinatorScheme
     public void BeginCycle()
     {
         Array.Clear(_known);
-        Trail.Begin(NoiseScale);
+        Trail.Begin(NoiseScale, _roundCap);
     }
 
     /// <summary>Whether the site has anything to answer in this round.</summary>
