@@ -43,7 +43,7 @@ internal static class BareServer
             $$"""{"rounds":{{rounds}},"seconds":{{seconds}},"median_ms":{{At(50)}},"p99_ms":{{At(99)}}}"""));
 
         // The clients stay connected until we are told to stop, so that their memory can be measured as it is after the work.
-        await Task.Delay(Timeout.Infinite, cancel);
+        await new TaskCompletionSource().Task.WaitAsync(cancel);
     }
 
     private static WebApplication Build(Fan fan, string folder)
