@@ -16,7 +16,7 @@ namespace Halfvoice.Hosting;
 /// </remarks>
 internal static class Lifeline
 {
-    /// <summary>Environment variable by which a starter says that it holds the lifeline; its value must be <see cref="OnStandardInput"/>.</summary>
+    /// <summary>Environment variable by which a starter says that it holds the lifeline: <see cref="OnStandardInput"/>.</summary>
     public const string Variable = "HALFVOICE_LIFELINE";
 
     /// <summary>The one value of <see cref="Variable"/>.</summary>
@@ -91,7 +91,7 @@ internal static class Lifeline
         {
             requestStop();
         }
-#pragma warning disable CA1031 // Whatever the host's own shutdown throws, the process must still end; the failure is told on standard error.
+#pragma warning disable CA1031 // Whatever the host's own shutdown throws, the process must still end; the failure is told.
         catch (Exception failure)
 #pragma warning restore CA1031
         {
@@ -110,7 +110,7 @@ internal static class Lifeline
         if (SetProcessOption(setParentDeathSignal, continueSignal, 0, 0, 0) != 0)
         {
             // Without it the lifeline still ends every process that runs; only a paused one would wait for its next SIGCONT.
-            Console.Error.WriteLine($"A paused process will outlive its starter here: prctl failed with {Marshal.GetLastPInvokeError()}.");
+            Console.Error.WriteLine($"A paused process would outlive its starter here: prctl gave {Marshal.GetLastPInvokeError()}.");
         }
     }
 

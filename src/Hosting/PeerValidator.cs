@@ -54,11 +54,16 @@ internal sealed class PeerValidator(X509Certificate2 authority, Func<RevocationL
         policy.VerificationFlags = X509VerificationFlags.IgnoreNotTimeValid | X509VerificationFlags.IgnoreCtlNotTimeValid;
         var holds = chain.Build(presented);
         // The authority issues directly: a chain of any other length rests on something that it did not hand out as an identity.
-        if (holds && chain.ChainElements.Count == 2 && chain.ChainElements[1].Certificate.RawDataMemory.Span.SequenceEqual(authority.RawDataMemory.Span))
+        if (holds && chain.ChainElements.Count == 2
+            && chain.ChainElements[1].Certificate.RawDataMemory.Span.SequenceEqual(authority.RawDataMemory.Span))
+        {
             return null;
+        }
+
         return PeerVerdict.Refuse(
             PeerRefusal.UnknownAuthority,
-            $"The certificate was not issued by this rehearsal's authority (serial {SerialOf(presented)}). Use the identity files of the same run.");
+            $"The certificate with serial {SerialOf(presented)} was not issued by this rehearsal's authority. " +
+            "Use the identity files of the same run.");
     }
 
     private PeerVerdict? CheckValidity(X509Certificate2 presented, DateTimeOffset now)
@@ -68,9 +73,16 @@ internal sealed class PeerValidator(X509Certificate2 authority, Func<RevocationL
             var first = new DateTimeOffset(certificate.NotBefore.ToUniversalTime());
             var last = new DateTimeOffset(certificate.NotAfter.ToUniversalTime());
             if (now > last)
-                return PeerVerdict.Refuse(PeerRefusal.Expired, $"{what} expired at {last:u}; it is {now:u} here. Issue a new one, or check this clock.");
+            {
+                return PeerVerdict.Refuse(
+                    PeerRefusal.Expired, $"{what} expired at {last:u}; it is {now:u} here. Issue a new one, or check this clock.");
+            }
+
             if (now < first)
-                return PeerVerdict.Refuse(PeerRefusal.NotYetValid, $"{what} is valid from {first:u}; it is {now:u} here. Check both clocks.");
+            {
+                return PeerVerdict.Refuse(
+                    PeerRefusal.NotYetValid, $"{what} is valid from {first:u}; it is {now:u} here. Check both clocks.");
+            }
         }
 
         return null;
@@ -85,7 +97,8 @@ internal sealed class PeerValidator(X509Certificate2 authority, Func<RevocationL
         {
             return PeerVerdict.Refuse(
                 PeerRefusal.RevocationListInvalid,
-                $"The revocation list counts from {list.ThisUpdate:u} to {list.NextUpdate:u}; it is {now:u} here. Write a new list, or check this clock.");
+                $"The revocation list counts from {list.ThisUpdate:u} to {list.NextUpdate:u}; it is {now:u} here. " +
+                "Write a new list, or check this clock.");
         }
 
         return list.Contains(presented.SerialNumberBytes.Span)
@@ -95,7 +108,8 @@ internal sealed class PeerValidator(X509Certificate2 authority, Func<RevocationL
 
     private static PeerVerdict? CheckUse(X509Certificate2 presented, string use)
     {
-        var uses = presented.Extensions.OfType<X509EnhancedKeyUsageExtension>().SelectMany(extension => extension.EnhancedKeyUsages.Cast<Oid>());
+        var uses = presented.Extensions.OfType<X509EnhancedKeyUsageExtension>()
+            .SelectMany(extension => extension.EnhancedKeyUsages.Cast<Oid>());
         return uses.Any(oid => oid.Value == use)
             ? null
             : PeerVerdict.Refuse(
@@ -146,5 +160,6 @@ internal sealed class PeerValidator(X509Certificate2 authority, Func<RevocationL
         return names;
     }
 
-    private static string SerialOf(X509Certificate2 certificate) => Convert.ToHexString(certificate.SerialNumberBytes.Span.TrimStart((byte)0));
+    private static string SerialOf(X509Certificate2 certificate) =>
+        Convert.ToHexString(certificate.SerialNumberBytes.Span.TrimStart((byte)0));
 }

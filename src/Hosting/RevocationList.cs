@@ -116,7 +116,9 @@ internal sealed class RevocationList
             }
         }
 
-        var unknown = body.HasData ? UnknownCriticalExtension(body.ReadSequence(_extensionsTag).ReadSequence(), AuthorityKeyIdentifier, ListNumber) : null;
+        var unknown = body.HasData
+            ? UnknownCriticalExtension(body.ReadSequence(_extensionsTag).ReadSequence(), AuthorityKeyIdentifier, ListNumber)
+            : null;
         body.ThrowIfNotEmpty();
         return unknown;
     }

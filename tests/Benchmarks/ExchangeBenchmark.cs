@@ -7,17 +7,6 @@ using Halfvoice.Rig.Processes;
 
 namespace Halfvoice.Benchmarks;
 
-/// <summary>What a bare gRPC exchange does on this machine.</summary>
-/// <param name="Clients">Client processes.</param>
-/// <param name="Rounds">Rounds measured, after a warm-up.</param>
-/// <param name="RoundsPerSecond">The yardstick.</param>
-/// <param name="MedianMs">Median time of a round, milliseconds.</param>
-/// <param name="P99Ms">99th percentile of a round, milliseconds.</param>
-/// <param name="ConnectSeconds">From the first client's start until all have their streams open.</param>
-/// <param name="ClientResidentMb">Mean resident memory of a client after the rounds, MB; NaN where it cannot be read.</param>
-public sealed record BareExchangeResult(
-    int Clients, int Rounds, double RoundsPerSecond, double MedianMs, double P99Ms, double ConnectSeconds, double ClientResidentMb);
-
 /// <summary>
 /// The exchange's yardstick: a gRPC program with the product's payload, processes and mutual TLS, and nothing behind them, asks
 /// N client processes round after round. The product's own exchange is held against it (design §11: 0.8 or more).
@@ -44,14 +33,7 @@ public static class ExchangeBenchmark
         }
 
         foreach (var count in clients)
-        {
-            var result = MeasureBareAsync(count, rounds, components, jit).GetAwaiter().GetResult();
-            Console.WriteLine(string.Create(
-                CultureInfo.InvariantCulture,
-                $"bare exchange, {count} client processes: {result.RoundsPerSecond:0} rounds/s (median {result.MedianMs:0.00} ms, p99 {result.P99Ms:0.00} ms), " +
-                $"all connected after {result.ConnectSeconds:0.00} s, {result.ClientResidentMb:0.0} MB resident each"));
-        }
-
+            Console.WriteLine(MeasureBareAsync(count, rounds, components, jit).GetAwaiter().GetResult());
         return 0;
     }
 
@@ -71,7 +53,7 @@ public static class ExchangeBenchmark
             WriteIdentities(folder, clients);
             await using var fleet = new ProcessFleet(cancel: cancel);
             var (server, ready) = await fleet.StartReadyAsync(
-                Start("server", executable, ["server", $"{clients}", $"{rounds}", $"{(rounds / 10) + 1}", $"{components}", folder]),
+                Start("server", executable, ["server", $"{clients}", $"{rounds}", $"{WarmUp(rounds)}", $"{components}", folder]),
                 IsReady, _patience, cancel).ConfigureAwait(false);
             var port = Number(ready, "port");
 
@@ -79,13 +61,17 @@ public static class ExchangeBenchmark
             var starts = Enumerable.Range(0, clients)
                 .Select(number => Start($"client {number}", executable, ["client", $"{port}", folder, $"site-{number}"])).ToList();
             var children = await fleet.StartAllAsync(starts, IsReady, _patience, cancel: cancel).ConfigureAwait(false);
-            await server.WaitForLineAsync(line => line.Contains("\"connected\"", StringComparison.Ordinal), _patience, cancel).ConfigureAwait(false);
+            await server.WaitForLineAsync(Says("connected"), _patience, cancel).ConfigureAwait(false);
             var connectSeconds = clock.Elapsed.TotalSeconds;
-            var done = await server.WaitForLineAsync(line => line.Contains("\"rounds\"", StringComparison.Ordinal), _patience, cancel).ConfigureAwait(false);
+            int[] processIds = [server.ProcessId, .. children.Select(child => child.ProcessId)];
+            var cpuBefore = processIds.Sum(CpuMs);
+            var done = await server.WaitForLineAsync(Says("rounds"), _patience, cancel).ConfigureAwait(false);
 
+            var cpuMsPerRound = (processIds.Sum(CpuMs) - cpuBefore) / (rounds + WarmUp(rounds));
             var residentMb = children.Average(child => ResidentMb(child.ProcessId));
             return new BareExchangeResult(
-                clients, rounds, rounds / Number(done, "seconds"), Number(done, "median_ms"), Number(done, "p99_ms"), connectSeconds, residentMb);
+                clients, rounds, rounds / Number(done, "seconds"), Number(done, "median_ms"), Number(done, "p99_ms"),
+                cpuMsPerRound, connectSeconds, residentMb);
         }
         finally
         {
@@ -120,6 +106,14 @@ public static class ExchangeBenchmark
         return double.Parse(line.Split(' ', StringSplitOptions.RemoveEmptyEntries)[1], CultureInfo.InvariantCulture) / 1024;
     }
 
+    private static int WarmUp(int rounds) => (rounds / 10) + 1;
+
+    private static double CpuMs(int processId)
+    {
+        using var process = Process.GetProcessById(processId);
+        return process.TotalProcessorTime.TotalMilliseconds;
+    }
+
     private static async Task<string> PublishAsync(bool jit, CancellationToken cancel)
     {
         var options = new BinaryOptions();
@@ -136,7 +130,8 @@ public static class ExchangeBenchmark
         if (failure is not null)
             throw new InvalidOperationException($"The bare exchange cannot be built: {failure}");
         var output = isNative ? $"release_{Toolchain.RuntimeIdentifier}" : "release";
-        return Path.Combine(artifacts, "publish", "BareExchange", output, OperatingSystem.IsWindows() ? "bare-exchange.exe" : "bare-exchange");
+        var fileName = OperatingSystem.IsWindows() ? "bare-exchange.exe" : "bare-exchange";
+        return Path.Combine(artifacts, "publish", "BareExchange", output, fileName);
     }
 
     private static void WriteIdentities(string folder, int clients)
@@ -160,6 +155,8 @@ public static class ExchangeBenchmark
 
     private static bool IsReady(string line) => line.StartsWith("{\"ready\":true", StringComparison.Ordinal);
 
+    private static Func<string, bool> Says(string name) => line => line.StartsWith($"{{\"{name}\"", StringComparison.Ordinal);
+
     private static double Number(string json, string name)
     {
         using var document = JsonDocument.Parse(json);
@@ -178,7 +175,7 @@ public static class ExchangeBenchmark
                     jit = true;
                     continue;
                 case "--clients":
-                    clients = [.. value.Split(',').Select(part => int.TryParse(part, CultureInfo.InvariantCulture, out var count) ? count : 0)];
+                    clients = [.. value.Split(',').Select(part => int.TryParse(part, CultureInfo.InvariantCulture, out var n) ? n : 0)];
                     break;
                 case "--rounds" when int.TryParse(value, CultureInfo.InvariantCulture, out rounds):
                 case "--components" when int.TryParse(value, CultureInfo.InvariantCulture, out components):

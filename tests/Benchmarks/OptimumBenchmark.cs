@@ -26,11 +26,11 @@ public static class OptimumBenchmark
 
     private static IEnumerable<(string Name, Network Network, double[] LoadMw)> Cases(bool quick)
     {
-        if (BenchmarkCases.TryRead("ieee-118", out var network, out var load))
+        if (OptimumBenchmarkCases.TryRead("ieee-118", out var network, out var load))
             yield return ("ieee-118", network, load);
         foreach (var count in quick ? (int[])[118, 1000] : [118, 1000, 5000, 10000])
         {
-            (network, load) = BenchmarkCases.Generate(count, seed: count);
+            (network, load) = OptimumBenchmarkCases.Generate(count, seed: count);
             yield return ("generated", network, load);
         }
     }

@@ -32,7 +32,7 @@ internal static class PlayedChild
                 if (!hangs)
                     stop.Set();
             },
-            TimeSpan.FromMilliseconds(200));
+            hangs ? TimeSpan.FromMilliseconds(200) : TimeSpan.FromSeconds(60));
         foreach (var option in options)
         {
             var (key, value) = option.Split('=', 2) is [var left, var right] ? (left, right) : (option, "");

@@ -53,7 +53,7 @@ public sealed class LabAuthority : IDisposable
     }
 
     /// <summary>Issues an identity with a new key and a random serial number.</summary>
-    /// <exception cref="ArgumentException">A site without a name, a name on another role, host names on a client, or an empty validity.</exception>
+    /// <exception cref="ArgumentException">A site without a name, a name on another role, host names on a client, an empty validity.</exception>
     public IssuedIdentity Issue(IdentityRequest request)
     {
         ArgumentNullException.ThrowIfNull(request);
@@ -77,7 +77,7 @@ public sealed class LabAuthority : IDisposable
         return new IssuedIdentity(bare.CopyWithPrivateKey(key));
     }
 
-    /// <summary>Puts a serial number on the list; nothing happens when it is on it already. Takes effect with the next list written.</summary>
+    /// <summary>Puts a serial number on the list, once. Takes effect with the next list written.</summary>
     /// <param name="serialNumber">Hexadecimal, as <see cref="IssuedIdentity.SerialNumber"/> gives it.</param>
     public void Revoke(string serialNumber)
     {

@@ -24,7 +24,8 @@ public sealed record AgentBinaries
     public required string Reason { get; init; }
 
     /// <summary>One line that says which build runs, and why.</summary>
-    public string Description => (Kind == BinaryKind.Native ? "Agents: Native AOT build. " : "Agents: JIT build, tiered compilation off. ") + Reason;
+    public string Description =>
+        (Kind == BinaryKind.Native ? "Agents: Native AOT build. " : "Agents: JIT build, tiered compilation off. ") + Reason;
 
     /// <summary>
     /// Variables to start them with. A JIT build gets tiered compilation switched off and is pointed at the runtime that runs us,

@@ -11,13 +11,15 @@ internal sealed class AgentBuild(SourceCheckout checkout, BinaryOptions options,
     {
         var lockPath = Path.Combine(checkout.Artifacts, "agents.lock");
         using var only = await BuildLock.TakeAsync(
-            lockPath, options.BuildWithin, () => progress("Another process is building the agents; waiting for it."), cancel).ConfigureAwait(false);
+            lockPath, options.BuildWithin, () => progress("Another process is building the agents; waiting for it."), cancel)
+            .ConfigureAwait(false);
         var whyNot = options.JitOnly ? "It was asked for." : Toolchain.WhyNotNative(options.SearchPath);
         if (whyNot is null)
         {
             var native = new Flavour(
                 "native", $"release_{Toolchain.RuntimeIdentifier}", "ahead of time", ["-r", Toolchain.RuntimeIdentifier]);
-            var (binaries, failure) = await BuildAsync(native, "They were built ahead of time on this machine.", cancel).ConfigureAwait(false);
+            var (binaries, failure) = await BuildAsync(native, "They were built ahead of time on this machine.", cancel)
+                .ConfigureAwait(false);
             if (binaries is not null)
                 return binaries;
             whyNot = $"The ahead-of-time build failed: {failure}";
@@ -61,8 +63,10 @@ internal sealed class AgentBuild(SourceCheckout checkout, BinaryOptions options,
 
     private static AgentBinaries? Find(string folder, Flavour flavour, string reason)
     {
-        var agent = Path.Combine(folder, "publish", "Agent", flavour.Output, AgentBinaries.FileNameOf(AgentBinaries.AgentName));
-        var coordinator = Path.Combine(folder, "publish", "Coordinator", flavour.Output, AgentBinaries.FileNameOf(AgentBinaries.CoordinatorName));
+        string PathOf(string project, string name) =>
+            Path.Combine(folder, "publish", project, flavour.Output, AgentBinaries.FileNameOf(name));
+        var agent = PathOf("Agent", AgentBinaries.AgentName);
+        var coordinator = PathOf("Coordinator", AgentBinaries.CoordinatorName);
         return File.Exists(agent) && File.Exists(coordinator) ? AgentBinaries.Of(agent, coordinator, reason) : null;
     }
 

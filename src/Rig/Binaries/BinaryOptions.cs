@@ -6,7 +6,7 @@ public sealed record BinaryOptions
     /// <summary>Folder that must hold both (<c>--binaries DIR</c>); null looks beside the rig and then builds from the source.</summary>
     public string? Folder { get; init; }
 
-    /// <summary>Skips the ahead-of-time build although it could be made; for machines where starting the run at once matters more.</summary>
+    /// <summary>Skips the ahead-of-time build although it could be made, where starting the run at once matters more.</summary>
     public bool JitOnly { get; init; }
 
     /// <summary>The rig's own folder: agents may lie in its <c>agents</c> folder, and a source checkout is looked for above it.</summary>

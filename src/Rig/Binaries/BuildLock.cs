@@ -36,7 +36,8 @@ internal sealed class BuildLock : IDisposable
             catch (IOException held)
             {
                 throw new BinariesException(
-                    $"Another process has been building here for over {within.TotalMinutes:0} minutes (lock '{path}'). End it, or wait.", held);
+                    $"Another process has been building here for over {within.TotalMinutes:0} minutes (lock '{path}'). End it, or wait.",
+                    held);
             }
 
             await Task.Delay(_retryAfter, cancel).ConfigureAwait(false);

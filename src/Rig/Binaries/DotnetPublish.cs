@@ -22,7 +22,8 @@ public sealed class DotnetPublish(string searchPath, TimeSpan within, Action<str
     /// <param name="what">What is being done, for the progress lines.</param>
     /// <param name="cancel">Ends the build.</param>
     /// <returns>What went wrong, as a sentence; null when the build succeeded.</returns>
-    public async Task<string?> RunAsync(string project, string artifacts, IReadOnlyList<string> arguments, string what, CancellationToken cancel)
+    public async Task<string?> RunAsync(
+        string project, string artifacts, IReadOnlyList<string> arguments, string what, CancellationToken cancel = default)
     {
         var dotnet = Environment.GetEnvironmentVariable("DOTNET_HOST_PATH") ?? Toolchain.FindCommand("dotnet", searchPath);
         if (dotnet is null)
@@ -49,7 +50,8 @@ public sealed class DotnetPublish(string searchPath, TimeSpan within, Action<str
         var exit = await child.Exited.ConfigureAwait(false);
         if (exit.ExitCode == 0)
             return null;
-        var firstError = output.Concat(exit.LastErrorLines).FirstOrDefault(line => line.Contains("error", StringComparison.OrdinalIgnoreCase));
+        var firstError = output.Concat(exit.LastErrorLines)
+            .FirstOrDefault(line => line.Contains("error", StringComparison.OrdinalIgnoreCase));
         return $"{firstError?.Trim() ?? $"dotnet publish ended with exit code {exit.ExitCode}"} (all of it is in '{logPath}')";
     }
 

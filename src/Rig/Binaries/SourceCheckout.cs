@@ -6,8 +6,11 @@ namespace Halfvoice.Rig.Binaries;
 /// <summary>The folder with the solution and the source that agents are built from.</summary>
 internal sealed class SourceCheckout
 {
-    private static readonly string[] _sourceEndings = [".cs", ".csproj", ".proto", ".props", ".targets", ".txt", ".json", ".html", ".css", ".js", ".svg"];
-    private static readonly string[] _rootFiles = ["Directory.Build.props", "Directory.Build.targets", "Directory.Packages.props", "global.json"];
+    private static readonly string[] _sourceEndings =
+        [".cs", ".csproj", ".proto", ".props", ".targets", ".txt", ".json", ".html", ".css", ".js", ".svg"];
+
+    private static readonly string[] _rootFiles =
+        ["Directory.Build.props", "Directory.Build.targets", "Directory.Packages.props", "global.json"];
 
     private SourceCheckout(string folder) => Folder = folder;
 
@@ -22,7 +25,8 @@ internal sealed class SourceCheckout
     {
         for (var folder = new DirectoryInfo(Path.GetFullPath(from)); folder is not null; folder = folder.Parent)
         {
-            if (File.Exists(Path.Combine(folder.FullName, "Agents.sln")) && File.Exists(Path.Combine(folder.FullName, "src", "Agent", "Agent.csproj")))
+            var isTop = File.Exists(Path.Combine(folder.FullName, "Agents.sln"));
+            if (isTop && File.Exists(Path.Combine(folder.FullName, "src", "Agent", "Agent.csproj")))
                 return new SourceCheckout(folder.FullName);
         }
 

@@ -6,7 +6,7 @@ namespace Halfvoice.Rig.Processes;
 /// <param name="ExitCode">Its exit code; 128 + n for a child that signal n ended.</param>
 /// <param name="WasExpected">True when we stopped or killed it, or had said that it would end.</param>
 /// <param name="LastErrorLines">The end of its standard error, oldest first, at most <see cref="KeptErrorLines"/> lines.</param>
-/// <param name="OutputFailure">What went wrong with handling its output (a full disk, a failing line handler); null when nothing did.</param>
+/// <param name="OutputFailure">What failed in handling its output (a full disk, a line handler); null when nothing did.</param>
 public sealed record ChildExit(
     string Name,
     int ProcessId,

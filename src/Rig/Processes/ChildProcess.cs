@@ -188,7 +188,7 @@ public sealed class ChildProcess : IAsyncDisposable
         await _process.WaitForExitAsync().ConfigureAwait(false);
         var pumps = Task.WhenAll(output, error);
         await Task.WhenAny(pumps, Task.Delay(_drainBound)).ConfigureAwait(false);
-        var failure = pumps.IsCompleted ? pumps.Result[0] ?? pumps.Result[1] : null;
+        var failure = pumps.IsCompletedSuccessfully ? pumps.Result[0] ?? pumps.Result[1] : pumps.Exception;
         _lines.Writer.TryComplete();
         var exit = new ChildExit(Name, ProcessId, _process.ExitCode, _exitIsExpected, _errors.LastLines, failure);
         CutLifeline();

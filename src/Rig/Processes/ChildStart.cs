@@ -15,7 +15,7 @@ public sealed record ChildStart(string Name, string Executable, IReadOnlyList<st
     /// <summary>File that standard error is appended to; null keeps only its last lines in memory.</summary>
     public string? ErrorLogPath { get; init; }
 
-    /// <summary>Standard error beyond this is read and thrown away, so that no child can fill the disk. Default 64 MiB, at least 0.</summary>
+    /// <summary>Standard error beyond this is thrown away, so that no child can fill the disk. Default 64 MiB, at least 0.</summary>
     public long ErrorLogLimitBytes { get; init; } = 64L << 20;
 
     /// <summary>
@@ -24,6 +24,9 @@ public sealed record ChildStart(string Name, string Executable, IReadOnlyList<st
     /// </summary>
     public Action<string>? OnLine { get; init; }
 
-    /// <summary>Lines kept in <see cref="ChildProcess.Lines"/> for a reader that lags; older ones are dropped and counted. Default 1,024, at least 1.</summary>
+    /// <summary>
+    /// Lines kept in <see cref="ChildProcess.Lines"/> for a reader that lags; older ones are dropped and counted.
+    /// Default 1,024, at least 1.
+    /// </summary>
     public int LineCapacity { get; init; } = 1024;
 }

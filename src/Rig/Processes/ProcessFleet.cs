@@ -79,14 +79,22 @@ public sealed class ProcessFleet : IAsyncDisposable
         return child;
     }
 
-    /// <summary>Starts a child and waits until it says that it is ready.</summary>
+    /// <summary>Starts a child and waits until it says that it is ready; kills it when that does not come about.</summary>
     /// <returns>The child and its ready line.</returns>
     /// <exception cref="ChildFailedException">It cannot be run, ended first, or said nothing in time.</exception>
     public async Task<(ChildProcess Child, string ReadyLine)> StartReadyAsync(
         ChildStart start, Func<string, bool> isReady, TimeSpan within, CancellationToken cancel = default)
     {
         var child = Start(start);
-        return (child, await child.WaitForLineAsync(isReady, within, cancel).ConfigureAwait(false));
+        try
+        {
+            return (child, await child.WaitForLineAsync(isReady, within, cancel).ConfigureAwait(false));
+        }
+        catch
+        {
+            child.Kill();
+            throw;
+        }
     }
 
     /// <summary>

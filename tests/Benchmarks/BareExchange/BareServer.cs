@@ -2,8 +2,6 @@ using System.Diagnostics;
 using System.Globalization;
 using System.Net;
 using System.Security.Authentication;
-using Grpc.Core;
-using Halfvoice.Benchmarks.BareExchange.Wire;
 using Halfvoice.Hosting;
 using Microsoft.AspNetCore.Hosting.Server;
 using Microsoft.AspNetCore.Hosting.Server.Features;
@@ -39,12 +37,13 @@ internal static class BareServer
 
         var seconds = clock.Elapsed.TotalSeconds;
         Array.Sort(milliseconds);
+        double At(int percent) => milliseconds[rounds * percent / 100];
         Console.WriteLine(string.Create(
             CultureInfo.InvariantCulture,
-            $$"""{"rounds":{{rounds}},"seconds":{{seconds:R}},"median_ms":{{milliseconds[rounds / 2]:R}},"p99_ms":{{milliseconds[rounds * 99 / 100]:R}}}"""));
+            $$"""{"rounds":{{rounds}},"seconds":{{seconds}},"median_ms":{{At(50)}},"p99_ms":{{At(99)}}}"""));
 
         // The clients stay connected until we are told to stop, so that their memory can be measured as it is after the work.
-        await Task.Delay(Timeout.Infinite, cancel);
+        await new TaskCompletionSource().Task.WaitAsync(cancel);
     }
 
     private static WebApplication Build(Fan fan, string folder)
@@ -71,16 +70,5 @@ internal static class BareServer
         app.UseRouting();
         app.MapGrpcService<BareService>();
         return app;
-    }
-}
-
-/// <summary>Hands each stream to the fan and keeps it open.</summary>
-internal sealed class BareService(Fan fan) : Bare.BareBase
-{
-    public override async Task Exchange(
-        IAsyncStreamReader<BareAnswer> requestStream, IServerStreamWriter<BareAsk> responseStream, ServerCallContext context)
-    {
-        await context.WriteResponseHeadersAsync([]);
-        await fan.JoinAsync(requestStream, responseStream, context.CancellationToken);
     }
 }

@@ -50,7 +50,11 @@ internal sealed class Fan(int clients, int components)
     private void Take(BareAnswer answer)
     {
         if (answer.Round != Volatile.Read(ref _round) || answer.Steps.Count != components)
-            throw new InvalidOperationException($"An answer to round {answer.Round} with {answer.Steps.Count} components came in round {_round}.");
+        {
+            throw new InvalidOperationException(
+                $"An answer to round {answer.Round} with {answer.Steps.Count} components came in round {_round}.");
+        }
+
         if (Interlocked.Decrement(ref _outstanding) == 0)
             _answered.SetResult();
     }

@@ -115,7 +115,9 @@ public class ChargeBookTests
     {
         var allowance = Of(PrivacyScope.Cycle);
         var row = Granted(new ChargeBook(allowance).TryReserve(1, 1, 4));
-        foreach (var bad in new[] { row with { Used = 5 }, row with { EpsilonUnitsEach = -1 }, row with { Answers = int.MaxValue }, row with { State = (ChargeState)9 } })
+        ChargeRow[] damaged =
+            [row with { Used = 5 }, row with { EpsilonUnitsEach = -1 }, row with { Answers = int.MaxValue }, row with { State = (ChargeState)9 }];
+        foreach (var bad in damaged)
             Assert.Throws<ArgumentException>(() => ChargeBook.Restore(allowance, [bad], out _));
         Assert.Throws<ArgumentException>(() => ChargeBook.Restore(allowance, [row, row], out _));
     }

@@ -4,7 +4,8 @@ namespace Halfvoice.Tests.Privacy;
 /// A plain dense predictor-corrector interior-point solver for min ½·xᵀHx + cᵀx, E·x = f, G·x ≤ h (Mehrotra 1992, from
 /// memory). Small problems only: it is the independent answer that sensitivity bounds are searched with.
 /// </summary>
-internal sealed class ConvexQuadratic(double[,] hessian, double[] cost, double[,] equal, double[] equalTo, double[,] less, double[] lessThan)
+internal sealed class ConvexQuadratic(
+    double[,] hessian, double[] cost, double[,] equal, double[] equalTo, double[,] less, double[] lessThan)
 {
     private readonly int _n = cost.Length;
     private readonly int _e = equalTo.Length;

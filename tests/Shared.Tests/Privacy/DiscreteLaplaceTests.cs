@@ -67,7 +67,10 @@ public class DiscreteLaplaceTests
         Assert.True(Math.Abs(sum / square) < 4.9 / Math.Sqrt(Sample));
     }
 
-    /// <summary>Check values computed independently of this code (an exact sum and the closed forms): rows 24 to 26 of the fact sheet.</summary>
+    /// <summary>
+    /// Check values computed independently of this code, by exact sums: pmf and variance after Ghosh, Roughgarden and
+    /// Sundararajan 2009 (from memory), the tail derived from them.
+    /// </summary>
     [Fact]
     public void Law_gives_the_known_values()
     {

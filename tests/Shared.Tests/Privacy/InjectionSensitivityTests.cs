@@ -19,9 +19,11 @@ public class InjectionSensitivityTests
             var plants = Enumerable.Range(0, count).Select(_ =>
             {
                 var least = random.NextDouble() * 20;
-                return (Min: least, Max: least + random.NextDouble() * 50, A: random.Next(2) * random.NextDouble(), B: random.NextDouble() * 60);
+                var most = least + random.NextDouble() * 50;
+                return (Min: least, Max: most, A: random.Next(2) * random.NextDouble(), B: random.NextDouble() * 60);
             }).ToArray();
-            var (u, z, penalty) = (random.NextDouble() * 200 - 100, random.NextDouble() * 200 - 100, Math.Pow(10, random.NextDouble() * 4 - 2));
+            var (u, z) = (random.NextDouble() * 200 - 100, random.NextDouble() * 200 - 100);
+            var penalty = Math.Pow(10, random.NextDouble() * 4 - 2);
             var load = random.NextDouble() * 100;
             var other = load + random.NextDouble() * 2 - 1;
             var moved = Solve(plants, u, z, penalty, other) - Solve(plants, u, z, penalty, load);

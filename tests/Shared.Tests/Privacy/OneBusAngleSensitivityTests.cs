@@ -152,7 +152,8 @@ public class OneBusAngleSensitivityTests
         {
             var n = random.Next(1, 11);
             var alike = trial % 4 == 0;
-            var b = Enumerable.Range(0, n).Select(_ => alike ? 10 : (1 + 9 * random.NextDouble()) * (random.Next(10) == 0 ? -1 : 1)).ToArray();
+            double Susceptance() => (1 + 9 * random.NextDouble()) * (random.Next(10) == 0 ? -1 : 1);
+            var b = Enumerable.Range(0, n).Select(_ => alike ? 10 : Susceptance()).ToArray();
             double[] weights = alike || trial % 4 == 1
                 ? [.. Enumerable.Repeat(7.0, n + 1)]
                 : [.. Enumerable.Range(0, n + 1).Select(_ => 1 + 9 * random.NextDouble())];

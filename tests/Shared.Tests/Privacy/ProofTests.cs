@@ -38,7 +38,8 @@ public partial class ProofTests
     public void All_privacy_code_is_covered_by_a_proof()
     {
         var covered = Proofs().SelectMany(proof => Covered(proof).Select(row => row.Code)).ToHashSet();
-        var open = Directory.EnumerateFiles(Root(), "*.cs", SearchOption.AllDirectories).Where(code => !covered.Contains(code)).Select(Name);
+        var all = Directory.EnumerateFiles(Root(), "*.cs", SearchOption.AllDirectories);
+        var open = all.Where(code => !covered.Contains(code)).Select(Name);
         Assert.Empty(open);
     }
 
@@ -61,8 +62,13 @@ public partial class ProofTests
     [GeneratedRegex(@"^\| `(?<code>[^`]+\.cs)` \| `(?<sum>[0-9a-f]{64})` \|$", RegexOptions.Multiline)]
     private static partial Regex Row();
 
-    private static (string Code, string Sum)[] Covered(string proof) => [.. Row().Matches(File.ReadAllText(proof).Replace("\r\n", "\n", StringComparison.Ordinal))
-        .Select(row => (Path.GetFullPath(Path.Combine(Path.GetDirectoryName(proof)!, row.Groups["code"].Value)), row.Groups["sum"].Value))];
+    private static (string Code, string Sum)[] Covered(string proof)
+    {
+        var folder = Path.GetDirectoryName(proof)!;
+        var text = File.ReadAllText(proof).Replace("\r\n", "\n", StringComparison.Ordinal);
+        return [.. Row().Matches(text).Select(row =>
+            (Path.GetFullPath(Path.Combine(folder, row.Groups["code"].Value)), row.Groups["sum"].Value))];
+    }
 
     private static string Sum(string code) => Sum(File.ReadAllBytes(code));
 

@@ -10,7 +10,7 @@ public class ScopeAllowanceTests
     private static ScopeAllowance Of(PrivacyScope scope, double epsilon, int rounds, int cycles = 3, bool once = false) =>
         ScopeAllowance.For(new PrivacySettings { Scope = scope, Epsilon = epsilon }, rounds, FiveMinutes, cycles, once);
 
-    /// <summary>Basic composition of 100 answers of ε 0.1 is 10 exactly (Dwork and Roth 2014, theorem 3.16, from memory; row 6 of the fact sheet).</summary>
+    /// <summary>Basic composition of 100 answers of ε 0.1 is 10 exactly (Dwork and Roth 2014, theorem 3.16, from memory).</summary>
     [Fact]
     public void A_hundred_answers_of_a_tenth_add_up_to_ten()
     {

@@ -148,7 +148,11 @@ public class ChildProcessTests
     {
         using var folder = new TestFolder();
         var cries = Enumerable.Range(0, 30).Select(number => $"cry=cry number {number:00}").ToArray();
-        var start = Children.Play("cries", [.. cries, "exit=1"]) with { ErrorLogPath = folder.File("logs/cries.txt"), ErrorLogLimitBytes = 100 };
+        var start = Children.Play("cries", [.. cries, "exit=1"]) with
+        {
+            ErrorLogPath = folder.File("logs/cries.txt"),
+            ErrorLogLimitBytes = 100,
+        };
         await using var child = ChildProcess.Start(start);
 
         var exit = await child.Exited.WaitAsync(Children.Patience, Cancel);

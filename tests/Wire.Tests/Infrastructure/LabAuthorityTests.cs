@@ -87,7 +87,8 @@ public sealed class LabAuthorityTests : IDisposable
         Assert.Throws<ArgumentException>(() => _authority.Issue(new IdentityRequest(IdentityRole.Rig, "named")));
         Assert.Throws<ArgumentException>(() => _authority.Issue(new IdentityRequest(IdentityRole.Site, "one") { DnsNames = ["host"] }));
         var now = _clock.GetUtcNow();
-        Assert.Throws<ArgumentException>(() => _authority.Issue(new IdentityRequest(IdentityRole.Rig) { ValidFrom = now, ValidUntil = now }));
+        var brief = new IdentityRequest(IdentityRole.Rig) { ValidFrom = now, ValidUntil = now };
+        Assert.Throws<ArgumentException>(() => _authority.Issue(brief));
     }
 
     [Fact]

@@ -39,18 +39,40 @@ public class ProcessFleetTests
     }
 
     [Fact]
-    public async Task Stopping_all_asks_first_and_kills_who_does_not_listen()
+    public async Task Stopping_all_asks_and_waits_for_clean_stops_also_of_paused_children()
     {
         await using var fleet = new ProcessFleet(killOnSignals: false);
         await fleet.StartAllAsync(
-            [Children.Play("obeys"), Children.Play("deaf", "deaf")], Children.IsReady, Children.Patience, cancel: Cancel);
-        fleet.Find("obeys")!.Pause();
+            [Children.Play("runs"), Children.Play("is paused")], Children.IsReady, Children.Patience, cancel: Cancel);
+        fleet.Find("is paused")!.Pause();
 
-        // The obedient one must make it within the grace even on a busy machine, and the deaf one costs the test all of it.
-        var exits = await fleet.StopAllAsync(TimeSpan.FromSeconds(5));
+        var exits = await fleet.StopAllAsync(Children.Patience);
 
-        Assert.Equal(Children.CleanStop, exits.Single(exit => exit.Name == "obeys").ExitCode);
-        Assert.Equal(128 + 9, exits.Single(exit => exit.Name == "deaf").ExitCode);
+        Assert.Equal([Children.CleanStop, Children.CleanStop], exits.Select(exit => exit.ExitCode));
+    }
+
+    [Fact]
+    public async Task Stopping_all_kills_who_does_not_listen()
+    {
+        await using var fleet = new ProcessFleet(killOnSignals: false);
+        var children = await fleet.StartAllAsync(
+            [Children.Play("deaf", "deaf"), Children.Play("deaf and paused", "deaf")], Children.IsReady, Children.Patience, cancel: Cancel);
+        children[1].Pause();
+
+        var exits = await fleet.StopAllAsync(TimeSpan.FromMilliseconds(50));
+
+        Assert.Equal([128 + 9, 128 + 9], exits.Select(exit => exit.ExitCode));
+    }
+
+    [Fact]
+    public async Task A_child_that_does_not_get_ready_in_time_is_killed()
+    {
+        await using var fleet = new ProcessFleet(killOnSignals: false);
+
+        await Assert.ThrowsAsync<ChildFailedException>(() => fleet.StartReadyAsync(
+            Children.Play("silent"), _ => false, TimeSpan.FromMilliseconds(100), Cancel));
+
+        await Task.WhenAll(fleet.Running.Select(child => child.Exited)).WaitAsync(Children.Patience, Cancel);
     }
 
     [Fact]

@@ -22,7 +22,8 @@ public sealed class RevocationListTests : IDisposable
     [Fact]
     public void Exactly_the_revoked_serial_numbers_are_on_the_list()
     {
-        var identities = Enumerable.Range(0, 40).Select(number => _authority.Issue(new IdentityRequest(IdentityRole.Site, $"{number}"))).ToList();
+        var identities = Enumerable.Range(0, 40)
+            .Select(number => _authority.Issue(new IdentityRequest(IdentityRole.Site, $"{number}"))).ToList();
         foreach (var identity in identities.Where((_, index) => index % 3 == 0))
             _authority.Revoke(identity.SerialNumber);
 
@@ -106,13 +107,17 @@ public sealed class RevocationListTests : IDisposable
         OpenSsl.SkipIfAbsent();
         await File.WriteAllTextAsync(_folder.File("authority.pem"), _handmade.Certificate.ExportCertificatePem(), Cancel);
         await File.WriteAllTextAsync(_folder.File("authority.key"), _handmade.Key.ExportPkcs8PrivateKeyPem(), Cancel);
-        await File.WriteAllTextAsync(_folder.File("index"), "R\t310101000000Z\t300101000000Z,keyCompromise\t0A1B2C\tunknown\t/CN=a site\n", Cancel);
+        await File.WriteAllTextAsync(
+            _folder.File("index"), "R\t310101000000Z\t300101000000Z,keyCompromise\t0A1B2C\tunknown\t/CN=a site\n", Cancel);
         await File.WriteAllTextAsync(_folder.File("number"), "01\n", Cancel);
         await File.WriteAllTextAsync(
-            _folder.File("ca.cnf"), "[ca]\ndefault_ca=d\n[d]\ndatabase=index\ncrlnumber=number\ndefault_md=sha256\ndefault_crl_days=9\n", Cancel);
+            _folder.File("ca.cnf"),
+            "[ca]\ndefault_ca=d\n[d]\ndatabase=index\ncrlnumber=number\ndefault_md=sha256\ndefault_crl_days=9\n",
+            Cancel);
 
         var (exitCode, output) = await OpenSsl.RunAsync(
-            _folder.Path, Cancel, "ca", "-config", "ca.cnf", "-gencrl", "-cert", "authority.pem", "-keyfile", "authority.key", "-out", "list.crl");
+            _folder.Path, Cancel,
+            "ca", "-config", "ca.cnf", "-gencrl", "-cert", "authority.pem", "-keyfile", "authority.key", "-out", "list.crl");
         Assert.True(exitCode == 0, output);
         var list = RevocationList.Read(await File.ReadAllBytesAsync(_folder.File("list.crl"), Cancel), _handmade.Certificate);
 

@@ -41,7 +41,7 @@ public sealed class ChargeBook
         {
             stored.Validate();
             if (!seen.Add(stored.Id))
-                throw new ArgumentException($"Row {stored.Id} stands twice in the ledger. Restore the ledger from its last sound copy.");
+                throw new ArgumentException($"Row {stored.Id} stands twice in the ledger: it is damaged. Keep the file and stop this site's answers.");
             var row = stored.State == ChargeState.Open ? stored with { State = ChargeState.Forfeited } : stored;
             if (row != stored)
                 closed.Add(row);

@@ -60,7 +60,8 @@ public sealed record ChargeRow(
             || Used < 0 || Used > Answers || !Enum.IsDefined(State))
         {
             throw new ArgumentException(
-                $"Row {Id} of the ledger is damaged. Keep the file, stop this site's answers and restore the ledger from its last sound copy.");
+                $"Row {Id} of the ledger is damaged. Keep the file, stop this site's answers "
+                + "and start a new campaign once it is known what was spent.");
         }
     }
 }

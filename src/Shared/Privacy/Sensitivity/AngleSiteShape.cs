@@ -14,7 +14,7 @@ public sealed record AngleSiteLine(int From, int To, double SusceptanceMwPerRad,
 /// </summary>
 public sealed record AngleSiteShape
 {
-    /// <summary>Largest ratio of two weights, or of two susceptances, for which the bounds' own rounding stays inside their allowance.</summary>
+    /// <summary>Largest ratio of two weights, or of two susceptances: up to it the bounds' own rounding stays inside their allowance.</summary>
     public const double MaxRatio = 1e6;
 
     /// <param name="ownBuses">Own buses, at least 1.</param>

@@ -135,7 +135,7 @@ internal sealed class AreaResponse
         return worst * (1 + 1e-12 / certainty);
     }
 
-    /// <summary>What the elimination of inner angles left of a row, squared, against the size it had: a cancellation loses digits.</summary>
+    /// <summary>What the elimination of inner angles left of a row, squared, against the size it had: cancelling loses digits.</summary>
     private double Kept(int row)
     {
         var sum = 0.0;

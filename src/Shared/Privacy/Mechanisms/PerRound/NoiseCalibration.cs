@@ -54,7 +54,11 @@ public sealed record NoiseCalibration
         // The lattice needs the scale's order of magnitude only; an answer that cannot move still gets a lattice.
         var scale = Math.Max(sensitivity.L1, bounds.Magnitude * SolverAllowance.ErrorFraction) * EpsilonUnits.PerOne / epsilonUnitsEach;
         if (!(scale > 0) || !double.IsFinite(scale) || Math.Abs((double)Math.ILogB(scale)) > AnswerLattice.MaxExponent / 2)
-            throw new ArgumentException("Sensitivity, bounds and ε give no usable noise scale; check privacy.adjacency_mw and privacy.epsilon.");
+        {
+            throw new ArgumentException(
+                "Sensitivity, bounds and ε give no usable noise scale; check privacy.adjacency_mw and privacy.epsilon.");
+        }
+
         var lattice = AnswerLattice.For(scale, bounds.Magnitude);
         var steps = lattice.IntegerSensitivity(widened, bounds.Dimension);
         var scaleSteps = (new ExactFraction(steps, 1) / new ExactFraction(epsilonUnitsEach, EpsilonUnits.PerOne)).Ceiling();

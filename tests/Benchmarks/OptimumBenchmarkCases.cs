@@ -5,7 +5,7 @@ using Halfvoice.Optimization;
 namespace Halfvoice.Benchmarks;
 
 /// <summary>Networks to measure on: benchmark plan folders beside the project, and generated ones of any size.</summary>
-internal static class BenchmarkCases
+internal static class OptimumBenchmarkCases
 {
     /// <summary>Reads grid and loads of a plan folder under ../shared/cases; false when it is not there.</summary>
     public static bool TryRead(string name, out Network network, out double[] loadMw)
@@ -15,7 +15,7 @@ internal static class BenchmarkCases
         var at = new DirectoryInfo(AppContext.BaseDirectory);
         while (at is not null && !File.Exists(Path.Combine(at.FullName, "Agents.sln")))
             at = at.Parent;
-        var folder = Path.Combine((at ?? new DirectoryInfo(Directory.GetCurrentDirectory())).FullName, "..", "shared", "cases", name);
+        var folder = at is null ? "" : Path.Combine(at.FullName, "..", "shared", "cases", name);
         if (!Directory.Exists(folder))
             return false;
         var buses = Rows(folder, "grid/buses.csv").Select(row => new Bus(row["bus"], row["site"])).ToArray();
