@@ -14,8 +14,14 @@ namespace Halfvoice.Coordination;
 /// </remarks>
 public sealed class SiteCore
 {
-    /// <summary>Rounds that one charge is reserved for ahead; one durable write then serves them all.</summary>
-    public const int ReserveBlock = 32;
+    /// <summary>
+    /// Rounds that a charge is reserved for ahead, so that one durable write serves them all: the first block of a cycle is
+    /// this long, later ones are as long as what went before, up to <see cref="LongestBlock"/>. A crash forfeits one block.
+    /// </summary>
+    public const int FirstBlock = 16;
+
+    /// <inheritdoc cref="FirstBlock"/>
+    public const int LongestBlock = 256;
 
     private readonly SiteSetup _setup;
     private readonly ISiteScheme _scheme;
@@ -164,7 +170,7 @@ public sealed class SiteCore
         }
 
         SettleBlock();
-        var wanted = Math.Min(ReserveBlock, _setup.RoundCap - id.Round + 1);
+        var wanted = Math.Min(Math.Clamp(id.Round - 1, FirstBlock, LongestBlock), _setup.RoundCap - id.Round + 1);
         var outcome = _book.TryReserve(id.Cycle, id.Round, Math.Max(1, Math.Min(wanted, _book.AnswersLeft(id.Cycle))));
         switch (outcome)
         {
