@@ -64,8 +64,8 @@ internal sealed class AgentHost
         using var call = client.Join(cancellationToken: stop);
         try
         {
-            await call.RequestStream.WriteAsync(wire.WriteEnrol(_setup.Site, _core.Enrolment()), stop).ConfigureAwait(false);
-            return await ListenAsync(call, wire, stop).ConfigureAwait(false);
+            await call.RequestStream.WriteAsync(wire.WriteEnrol(_setup.Site, _core.Enrolment())).ConfigureAwait(false);
+            return await ListenAsync(call, wire).ConfigureAwait(false);
         }
         catch (RpcException failure) when (failure.StatusCode == StatusCode.PermissionDenied)
         {
@@ -83,16 +83,17 @@ internal sealed class AgentHost
         }
     }
 
+    /// <summary>Reads until the stream ends. The call itself carries the stop, so that no message pays for registering it again.</summary>
     private async Task<StreamEnd> ListenAsync(
-        AsyncDuplexStreamingCall<V1.FromSite, V1.FromCoordinator> call, CoordinatorWire wire, CancellationToken stop)
+        AsyncDuplexStreamingCall<V1.FromSite, V1.FromCoordinator> call, CoordinatorWire wire)
     {
-        while (await call.ResponseStream.MoveNext(stop).ConfigureAwait(false))
+        while (await call.ResponseStream.MoveNext(CancellationToken.None).ConfigureAwait(false))
         {
             var (message, fault) = wire.Read(call.ResponseStream.Current);
             if (fault is not null)
             {
                 _log.Warning("Refused a message of the coordinator: {Reason} {Text}", fault.Reason, fault.Text);
-                await call.RequestStream.WriteAsync(wire.WriteRefusal(fault.At(RoundId.None)), stop).ConfigureAwait(false);
+                await call.RequestStream.WriteAsync(wire.WriteRefusal(fault.At(RoundId.None))).ConfigureAwait(false);
                 return StreamEnd.LinkLost;
             }
 
@@ -101,17 +102,17 @@ internal sealed class AgentHost
                 case FromCoordinatorMessage.Welcomed welcomed:
                     _backoff.Reset();
                     _log.Information("Joined; next is cycle {Cycle}", welcomed.Welcome.NextCycle);
-                    await DoAsync(call, wire, new SiteInput.Welcomed(welcomed.Welcome), stop).ConfigureAwait(false);
+                    await DoAsync(call, wire, new SiteInput.Welcomed(welcomed.Welcome)).ConfigureAwait(false);
                     break;
                 case FromCoordinatorMessage.Asked asked:
-                    await DoAsync(call, wire, new SiteInput.Asked(asked.Ask), stop).ConfigureAwait(false);
+                    await DoAsync(call, wire, new SiteInput.Asked(asked.Ask)).ConfigureAwait(false);
                     break;
                 case FromCoordinatorMessage.Ended ended:
                     _log.Information("Cycle {Cycle} ended: {End} after {Rounds} rounds", ended.Outcome.Cycle, ended.Outcome.End, ended.Outcome.Rounds);
-                    await DoAsync(call, wire, new SiteInput.Ended(ended.Outcome), stop).ConfigureAwait(false);
+                    await DoAsync(call, wire, new SiteInput.Ended(ended.Outcome)).ConfigureAwait(false);
                     break;
                 case FromCoordinatorMessage.Pulse:
-                    await call.RequestStream.WriteAsync(wire.WritePulse(), stop).ConfigureAwait(false);
+                    await call.RequestStream.WriteAsync(wire.WritePulse()).ConfigureAwait(false);
                     break;
                 case FromCoordinatorMessage.Refused refused:
                     _log.Warning("The coordinator refused: {Reason} {Text}", refused.Refusal.Reason, refused.Refusal.Text);
@@ -131,18 +132,18 @@ internal sealed class AgentHost
     }
 
     private async Task DoAsync(
-        AsyncDuplexStreamingCall<V1.FromSite, V1.FromCoordinator> call, CoordinatorWire wire, SiteInput input, CancellationToken stop)
+        AsyncDuplexStreamingCall<V1.FromSite, V1.FromCoordinator> call, CoordinatorWire wire, SiteInput input)
     {
         var step = _core.Step(input);
         _ledger.Store(step.Charges, step.SetPoints);
         switch (step.Reply)
         {
             case SiteReply.Answered answered:
-                await call.RequestStream.WriteAsync(wire.WriteAnswer(answered.Answer), stop).ConfigureAwait(false);
+                await call.RequestStream.WriteAsync(wire.WriteAnswer(answered.Answer)).ConfigureAwait(false);
                 break;
             case SiteReply.Refused refused:
                 _log.Warning("Refused {Round}: {Reason}", refused.Refusal.Id, refused.Refusal.Reason);
-                await call.RequestStream.WriteAsync(wire.WriteRefusal(refused.Refusal), stop).ConfigureAwait(false);
+                await call.RequestStream.WriteAsync(wire.WriteRefusal(refused.Refusal)).ConfigureAwait(false);
                 break;
             default:
                 break;

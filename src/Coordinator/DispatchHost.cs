@@ -1,12 +1,12 @@
-using System.Threading.Channels;
 using Halfvoice.Coordination;
 using Halfvoice.Wire;
 
 namespace Halfvoice.Coordinator;
 
 /// <summary>
-/// Feeds the coordinator core from one queue and does what it says, in its order: store, then send. Decisions about rounds,
-/// quorum and budget are the core's; this class only translates and keeps.
+/// Feeds the coordinator core, one input at a time under one lock, and does what it says in its order: store, then send.
+/// Inputs come straight from the threads that read the streams, so that an answer needs no queue between them and the core.
+/// Decisions about rounds, quorum and budget are the core's; this class only translates and keeps.
 /// </summary>
 internal sealed class DispatchHost : IDisposable
 {
@@ -19,10 +19,14 @@ internal sealed class DispatchHost : IDisposable
     private readonly Dictionary<string, int> _index;
     private readonly ITimer _timer;
     private readonly Serilog.ILogger _log;
+    private readonly Lock _gate = new();
+    private readonly TaskCompletionSource _done = new(TaskCreationOptions.RunContinuationsAsynchronously);
     private TimeSpan? _armed;
+    private TimeSpan _nextPulse;
     private long _down;
     private long _up;
-    private TimeSpan _nextPulse;
+    private long _takenDown;
+    private long _takenUp;
 
     public DispatchHost(CoordinatorSetup setup, CoordinatorCore core, Journal journal, ProgressLines progress, TimeProvider time, Serilog.ILogger log)
     {
@@ -34,83 +38,38 @@ internal sealed class DispatchHost : IDisposable
         _started = time.GetTimestamp();
         _seats = new SiteStream?[setup.Sites.Count];
         _index = setup.Sites.Select((site, i) => (site.Name, i)).ToDictionary(pair => pair.Name, pair => pair.i, StringComparer.Ordinal);
-        _timer = time.CreateTimer(_ => Events.Writer.TryWrite(new HostEvent.Woke()), null, Timeout.InfiniteTimeSpan, Timeout.InfiniteTimeSpan);
+        _timer = time.CreateTimer(_ => Wake(), null, Timeout.InfiniteTimeSpan, Timeout.InfiniteTimeSpan);
     }
 
-    /// <summary>The one queue. Bounded, so that a flood waits at its own stream and not in memory.</summary>
-    public Channel<HostEvent> Events { get; } =
-        Channel.CreateBounded<HostEvent>(new BoundedChannelOptions(8192) { SingleReader = true });
+    public int SiteCount => _seats.Length;
+
+    /// <summary>Completes when the core is finished and all farewells are under way; faults when the journal cannot be kept.</summary>
+    public Task Done => _done.Task;
 
     private TimeSpan Now => _time.GetElapsedTime(_started);
-
-    public int SiteCount => _seats.Length;
 
     /// <summary>Index of a site of the plan, or null.</summary>
     public int? IndexOf(string site) => _index.TryGetValue(site, out var i) ? i : null;
 
-    /// <summary>Runs until the core says that it is finished.</summary>
-    public async Task RunAsync()
+    /// <summary>Lets sites join from now on.</summary>
+    public void Start() => Guard(() =>
     {
         _nextPulse = Now + TimeSpan.FromSeconds(WireContract.PulseSeconds);
-        var finished = Do(_core.Step(new CoordinatorInput.Started(), Now));
-        while (!finished)
-        {
-            Arm();
-            var next = await Events.Reader.ReadAsync().ConfigureAwait(false);
-            finished = Take(next);
-        }
+        Do(_core.Step(new CoordinatorInput.Started(), Now));
+    });
 
-        foreach (var seat in _seats)
-            seat?.Complete();
-        Events.Writer.TryComplete();
-    }
-
-    public void Dispose() => _timer.Dispose();
-
-    private bool Take(HostEvent next)
+    /// <summary>A stream with a proven identity and a readable enrolment asks for its seat.</summary>
+    public void Join(SiteStream stream, Enrol enrol) => Guard(() =>
     {
-        switch (next)
-        {
-            case HostEvent.Joining joining:
-                return Join(joining);
-            case HostEvent.Leaving leaving:
-                if (_seats[leaving.Stream.Site] != leaving.Stream)
-                    return false;
-                Retire(leaving.Stream);
-                return Do(_core.Step(new CoordinatorInput.SiteLeft(leaving.Stream.Site), Now));
-            case HostEvent.Answered answered:
-                return _seats[answered.Stream.Site] == answered.Stream
-                    && Do(_core.Step(new CoordinatorInput.AnswerArrived(answered.Stream.Site, answered.Answer), Now));
-            case HostEvent.Refused refused:
-                return _seats[refused.Stream.Site] == refused.Stream
-                    && Do(_core.Step(new CoordinatorInput.RefusalArrived(refused.Stream.Site, refused.Refusal), Now));
-            case HostEvent.Faulty faulty:
-                _journal.Store([new JournalEntry.Refused(faulty.Stream.Site, false, faulty.Refusal)], TakeBytes);
-                _log.Warning("Refused a message of {Site}: {Reason}", faulty.Stream.Name, faulty.Refusal.Reason);
-                faulty.Stream.TrySend(new CoordinatorMessage.Refused(faulty.Refusal));
-                faulty.Stream.Complete();
-                return false;
-            case HostEvent.Woke:
-                _armed = null;
-                Pulse();
-                return Do(_core.Step(new CoordinatorInput.Woke(), Now));
-            case HostEvent.Stop:
-                return Do(_core.Step(new CoordinatorInput.StopAsked(), Now));
-            default:
-                throw new ArgumentOutOfRangeException(nameof(next));
-        }
-    }
-
-    private bool Join(HostEvent.Joining joining)
-    {
-        var stream = joining.Stream;
         var taken = _seats[stream.Site] is not null;
         if (!taken)
             _seats[stream.Site] = stream;
-        var step = _core.Step(new CoordinatorInput.SiteJoined(stream.Site, joining.Enrol), Now);
-        var welcomed = step.Send.Any(pair => pair.Site == stream.Site && pair.Message is CoordinatorMessage.Welcomed);
-        if (welcomed)
-            return Do(step);
+        var step = _core.Step(new CoordinatorInput.SiteJoined(stream.Site, enrol), Now);
+        if (step.Send.Any(pair => pair.Site == stream.Site && pair.Message is CoordinatorMessage.Welcomed))
+        {
+            Do(step);
+            return;
+        }
 
         // Refused: the 'no' belongs to the new stream, never to one that sits in the seat already.
         _journal.Store(step.Store, TakeBytes);
@@ -119,10 +78,75 @@ internal sealed class DispatchHost : IDisposable
         stream.Complete();
         if (!taken)
             _seats[stream.Site] = null;
-        return false;
+    });
+
+    public void Leave(SiteStream stream) => Guard(() =>
+    {
+        stream.Complete();
+        if (_seats[stream.Site] != stream)
+            return;
+        _seats[stream.Site] = null;
+        _down += stream.BytesDown;
+        _up += stream.BytesUp;
+        Do(_core.Step(new CoordinatorInput.SiteLeft(stream.Site), Now));
+    });
+
+    public void Answer(SiteStream stream, Answer answer) => Guard(() =>
+    {
+        if (_seats[stream.Site] == stream)
+            Do(_core.Step(new CoordinatorInput.AnswerArrived(stream.Site, answer), Now));
+    });
+
+    public void Refuse(SiteStream stream, Refusal refusal) => Guard(() =>
+    {
+        if (_seats[stream.Site] == stream)
+            Do(_core.Step(new CoordinatorInput.RefusalArrived(stream.Site, refusal), Now));
+    });
+
+    /// <summary>Something unreadable or out of order came in: it is journalled, answered by a typed refusal, and the stream ends.</summary>
+    public void Fault(SiteStream stream, Refusal refusal) => Guard(() =>
+    {
+        _journal.Store([new JournalEntry.Refused(stream.Site, false, refusal)], TakeBytes);
+        _log.Warning("Refused a message of {Site}: {Reason}", stream.Name, refusal.Reason);
+        stream.TrySend(new CoordinatorMessage.Refused(refusal));
+        stream.Complete();
+    });
+
+    /// <summary>Asks for an orderly end.</summary>
+    public void Stop() => Guard(() => Do(_core.Step(new CoordinatorInput.StopAsked(), Now)));
+
+    public void Dispose() => _timer.Dispose();
+
+    private void Wake() => Guard(() =>
+    {
+        _armed = null;
+        Pulse();
+        Do(_core.Step(new CoordinatorInput.Woke(), Now));
+    });
+
+    /// <summary>One at a time; nothing after the end; and whatever fails ends the coordinator instead of vanishing in a stream's task.</summary>
+    private void Guard(Action action)
+    {
+        lock (_gate)
+        {
+            if (_done.Task.IsCompleted)
+                return;
+            try
+            {
+                action();
+                if (!_done.Task.IsCompleted)
+                    Arm();
+            }
+#pragma warning disable CA1031 // It is not swallowed: the coordinator's main task rethrows it.
+            catch (Exception failure)
+#pragma warning restore CA1031
+            {
+                _done.TrySetException(failure);
+            }
+        }
     }
 
-    private bool Do(CoordinatorStep step)
+    private void Do(CoordinatorStep step)
     {
         _journal.Store(step.Store, TakeBytes);
         foreach (var (site, message) in step.Send)
@@ -133,15 +157,11 @@ internal sealed class DispatchHost : IDisposable
 
         foreach (var news in step.News)
             _progress.Tell(news, Now);
-        return step.Finished;
-    }
-
-    private void Retire(SiteStream stream)
-    {
-        _seats[stream.Site] = null;
-        _down += stream.BytesDown;
-        _up += stream.BytesUp;
-        stream.Complete();
+        if (!step.Finished)
+            return;
+        foreach (var seat in _seats)
+            seat?.Complete();
+        _done.TrySetResult();
     }
 
     /// <summary>Bytes on the wire since this was last asked.</summary>
@@ -159,9 +179,6 @@ internal sealed class DispatchHost : IDisposable
         return result;
     }
 
-    private long _takenDown;
-    private long _takenUp;
-
     private void Pulse()
     {
         if (Now < _nextPulse)
@@ -174,11 +191,11 @@ internal sealed class DispatchHost : IDisposable
         }
     }
 
-    /// <summary>Sets the one timer to the earlier of the core's wake-up and the next pulse.</summary>
+    /// <summary>Sets the one timer to the earlier of the core's wake-up and the next pulse. Later wake-ups than the armed one leave it be.</summary>
     private void Arm()
     {
         var at = _core.WakeAt is { } wake && wake < _nextPulse ? wake : _nextPulse;
-        if (_armed == at)
+        if (_armed is { } armed && armed <= at)
             return;
         _armed = at;
         var wait = at - Now;

@@ -25,25 +25,16 @@ internal sealed class DispatchService : V1.Dispatch.DispatchBase
         var site = _identity.SiteOf(context);
         var index = _host.IndexOf(site)
             ?? throw new RpcException(new Status(StatusCode.PermissionDenied, "The plan has no site of the certificate's name."));
-        var stream = new SiteStream(index, site);
-        var write = WriteAllAsync(stream, responseStream, context.CancellationToken);
+        var stream = new SiteStream(index, site, responseStream);
         var read = ReadAllAsync(stream, requestStream, context.CancellationToken);
         try
         {
             // Whichever ends first ends the stream: the site hung up, or we have nothing more to say to it. In the second case the
             // site gets a moment to read to the end and hang up, because returning at once would cut off what is under way.
-            var first = await Task.WhenAny(write, read).ConfigureAwait(false);
-            if (first == read)
-            {
+            if (await Task.WhenAny(stream.AllSent, read).ConfigureAwait(false) == read)
                 stream.Complete();
-                await write.ConfigureAwait(false);
-            }
-            else
-            {
-                await read.WaitAsync(HangUpGrace, context.CancellationToken).ConfigureAwait(false);
-            }
-
-            await first.ConfigureAwait(false);
+            await stream.AllSent.WaitAsync(HangUpGrace, context.CancellationToken).ConfigureAwait(false);
+            await read.WaitAsync(HangUpGrace, context.CancellationToken).ConfigureAwait(false);
         }
         catch (Exception failure) when (failure is OperationCanceledException or IOException or InvalidOperationException or TimeoutException)
         {
@@ -51,15 +42,8 @@ internal sealed class DispatchService : V1.Dispatch.DispatchBase
         }
         finally
         {
-            await _host.Events.Writer.WriteAsync(new HostEvent.Leaving(stream)).AsTask()
-                .ContinueWith(_ => { }, TaskScheduler.Default).ConfigureAwait(false);
+            _host.Leave(stream);
         }
-    }
-
-    private static async Task WriteAllAsync(SiteStream stream, IServerStreamWriter<V1.FromCoordinator> writer, CancellationToken cancel)
-    {
-        await foreach (var message in stream.Outgoing.ReadAllAsync(cancel).ConfigureAwait(false))
-            await writer.WriteAsync(message, cancel).ConfigureAwait(false);
     }
 
     private async Task ReadAllAsync(SiteStream stream, IAsyncStreamReader<V1.FromSite> reader, CancellationToken cancel)
@@ -69,40 +53,42 @@ internal sealed class DispatchService : V1.Dispatch.DispatchBase
         {
             stream.CountUp(reader.Current);
             var (message, fault) = stream.Wire.Read(reader.Current);
-            if (message is FromSiteMessage.Farewell)
-                return;
-            var next = fault is not null
-                ? new HostEvent.Faulty(stream, fault.At(RoundId.None))
-                : Translate(stream, message!, ref enrolled);
-            if (next is not null)
-                await _host.Events.Writer.WriteAsync(next, cancel).ConfigureAwait(false);
-            if (next is HostEvent.Faulty)
+            if (fault is not null)
+                _host.Fault(stream, fault.At(RoundId.None));
+            if (fault is not null || message is FromSiteMessage.Farewell || !Hand(stream, message!, ref enrolled))
                 return;
         }
     }
 
-    private static HostEvent? Translate(SiteStream stream, FromSiteMessage message, ref bool enrolled)
+    /// <summary>Hands a checked message to the host; false where it came out of turn and the stream ends.</summary>
+    private bool Hand(SiteStream stream, FromSiteMessage message, ref bool enrolled)
     {
         switch (message)
         {
-            case FromSiteMessage.Enrolled enrol when !enrolled:
+            case FromSiteMessage.Enrolled enrol when !enrolled && enrol.Site == stream.Name:
                 enrolled = true;
-                return enrol.Site == stream.Name
-                    ? new HostEvent.Joining(stream, enrol.Enrol)
-                    : Fault(stream, RefusalReason.WrongIdentity, "The enrolment names another site than the certificate.");
+                _host.Join(stream, enrol.Enrol);
+                return true;
+            case FromSiteMessage.Enrolled when !enrolled:
+                return Fault(stream, RefusalReason.WrongIdentity, "The enrolment names another site than the certificate.");
             case FromSiteMessage.Enrolled:
                 return Fault(stream, RefusalReason.OutOfOrder, "A site enrols once a stream.");
             case FromSiteMessage.Pulse:
-                return null;
+                return true;
             case FromSiteMessage.Answered answered when enrolled:
-                return new HostEvent.Answered(stream, answered.Answer);
+                _host.Answer(stream, answered.Answer);
+                return true;
             case FromSiteMessage.Refused refused when enrolled:
-                return new HostEvent.Refused(stream, refused.Refusal);
+                _host.Refuse(stream, refused.Refusal);
+                return true;
             default:
                 return Fault(stream, RefusalReason.OutOfOrder, "A site enrols before it says anything else.");
         }
     }
 
-    private static HostEvent.Faulty Fault(SiteStream stream, RefusalReason reason, string text) =>
-        new(stream, new Refusal(RoundId.None, reason, text));
+    private bool Fault(SiteStream stream, RefusalReason reason, string text)
+    {
+        _host.Fault(stream, new Refusal(RoundId.None, reason, text));
+        return false;
+    }
 }

@@ -72,14 +72,15 @@ internal static class CoordinatorProgram
         await using var app = BuildServer(options, host, caller, identity, log);
         await app.StartAsync().ConfigureAwait(false);
 
-        Lifeline.Watch(() => host.Events.Writer.TryWrite(new HostEvent.Stop()));
+        Lifeline.Watch(host.Stop);
         using var terminate = PosixSignalRegistration.Create(PosixSignal.SIGTERM, AskToStop);
         using var interrupt = PosixSignalRegistration.Create(PosixSignal.SIGINT, AskToStop);
         var address = new Uri(app.Services.GetRequiredService<IServer>().Features.Get<IServerAddressesFeature>()!.Addresses.First());
         progress.Ready(address.Host, address.Port);
         log.Information("Plan {Plan}: listening on {Host}:{Port} for {Sites} sites", setup.Plan, address.Host, address.Port, setup.Sites.Count);
 
-        await host.RunAsync().ConfigureAwait(false);
+        host.Start();
+        await host.Done.ConfigureAwait(false);
         progress.Finished();
         using var grace = new CancellationTokenSource(TimeSpan.FromSeconds(5));
         await app.StopAsync(grace.Token).ConfigureAwait(false);
@@ -89,7 +90,7 @@ internal static class CoordinatorProgram
         void AskToStop(PosixSignalContext context)
         {
             context.Cancel = true;
-            host.Events.Writer.TryWrite(new HostEvent.Stop());
+            host.Stop();
         }
     }
 

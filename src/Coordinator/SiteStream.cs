@@ -1,12 +1,15 @@
-using System.Threading.Channels;
 using Google.Protobuf;
+using Grpc.Core;
 using Halfvoice.Coordination;
 using Halfvoice.Wire;
 using V1 = Halfvoice.Wire.V1;
 
 namespace Halfvoice.Coordinator;
 
-/// <summary>One site's live stream: its outgoing queue and its byte counts.</summary>
+/// <summary>
+/// One site's live stream: what is sent to it, in order, and its byte counts. A message is handed to gRPC at once when
+/// nothing is under way, so that a round needs no extra hop between threads; otherwise it waits in a short queue.
+/// </summary>
 internal sealed class SiteStream
 {
     // A healthy site has one ask and one outcome outstanding; a site that lets more than this pile up is cut off.
@@ -15,16 +18,20 @@ internal sealed class SiteStream
     // What gRPC puts before every message: a flag and a length.
     private const int FrameBytes = 5;
 
-    private readonly Channel<V1.FromCoordinator> _outgoing =
-        Channel.CreateBounded<V1.FromCoordinator>(new BoundedChannelOptions(QueueBound) { SingleReader = true });
-
+    private readonly IServerStreamWriter<V1.FromCoordinator> _writer;
+    private readonly Lock _gate = new();
+    private readonly Queue<V1.FromCoordinator> _waiting = new();
+    private readonly TaskCompletionSource _sent = new(TaskCreationOptions.RunContinuationsAsynchronously);
+    private bool _writing;
+    private bool _complete;
     private long _bytesDown;
     private long _bytesUp;
 
-    public SiteStream(int site, string name)
+    public SiteStream(int site, string name, IServerStreamWriter<V1.FromCoordinator> writer)
     {
         Site = site;
         Name = name;
+        _writer = writer;
     }
 
     public int Site { get; }
@@ -33,28 +40,117 @@ internal sealed class SiteStream
 
     public SiteWire Wire { get; } = new();
 
-    public ChannelReader<V1.FromCoordinator> Outgoing => _outgoing.Reader;
+    /// <summary>Completes when <see cref="Complete"/> was called and everything before it has left, or when the stream broke.</summary>
+    public Task AllSent => _sent.Task;
 
     public long BytesDown => Interlocked.Read(ref _bytesDown);
 
     public long BytesUp => Interlocked.Read(ref _bytesUp);
 
-    /// <summary>Queues a message; false where the site has stopped reading and must be cut off. Called from the host's loop only.</summary>
-    public bool TrySend(CoordinatorMessage message) => TryQueue(Wire.Write(message));
+    /// <summary>Sends a message in its turn; false where the site has stopped reading and must be cut off. Called under the host's lock only.</summary>
+    public bool TrySend(CoordinatorMessage message) => TrySend(Wire.Write(message));
 
-    /// <summary>Queues a sign of life. Called from the host's loop only.</summary>
-    public bool TrySendPulse() => TryQueue(Wire.WritePulse());
+    /// <summary>Sends a sign of life. Called under the host's lock only.</summary>
+    public bool TrySendPulse() => TrySend(Wire.WritePulse());
 
     public void CountUp(IMessage message) => Interlocked.Add(ref _bytesUp, message.CalculateSize() + FrameBytes);
 
-    /// <summary>Nothing more will be sent; what is queued still leaves.</summary>
-    public void Complete() => _outgoing.Writer.TryComplete();
-
-    private bool TryQueue(V1.FromCoordinator message)
+    /// <summary>Nothing more will be sent; what waits still leaves.</summary>
+    public void Complete()
     {
-        if (!_outgoing.Writer.TryWrite(message))
-            return false;
-        Interlocked.Add(ref _bytesDown, message.CalculateSize() + FrameBytes);
+        lock (_gate)
+        {
+            _complete = true;
+            if (!_writing)
+                _sent.TrySetResult();
+        }
+    }
+
+    private bool TrySend(V1.FromCoordinator message)
+    {
+        lock (_gate)
+        {
+            if (_complete)
+                return true;
+            if (_writing && _waiting.Count >= QueueBound)
+                return false;
+            Interlocked.Add(ref _bytesDown, message.CalculateSize() + FrameBytes);
+            if (_writing)
+            {
+                _waiting.Enqueue(message);
+                return true;
+            }
+
+            _writing = true;
+        }
+
+        Write(message);
         return true;
+    }
+
+    /// <summary>Writes a message and whatever waits behind it; goes on in the background where the connection makes us wait.</summary>
+    private void Write(V1.FromCoordinator first)
+    {
+        try
+        {
+            var message = first;
+            do
+            {
+                var write = _writer.WriteAsync(message);
+                if (!write.IsCompletedSuccessfully)
+                {
+                    _ = FinishAsync(write);
+                    return;
+                }
+            }
+            while (Next(out message));
+        }
+        catch (Exception broken) when (IsBroken(broken))
+        {
+            GiveUp();
+        }
+    }
+
+    private async Task FinishAsync(Task write)
+    {
+        try
+        {
+            await write.ConfigureAwait(false);
+            while (Next(out var next))
+                await _writer.WriteAsync(next).ConfigureAwait(false);
+        }
+        catch (Exception broken) when (IsBroken(broken))
+        {
+            GiveUp();
+        }
+    }
+
+    private static bool IsBroken(Exception failure) =>
+        failure is InvalidOperationException or IOException or OperationCanceledException or RpcException;
+
+    /// <summary>The connection is gone; the reading side finds that out and tells the host. Nothing of what waits can leave.</summary>
+    private void GiveUp()
+    {
+        lock (_gate)
+        {
+            _complete = true;
+            _waiting.Clear();
+        }
+
+        _sent.TrySetResult();
+    }
+
+    /// <summary>Takes the next waiting message, or ends the writing.</summary>
+    private bool Next([System.Diagnostics.CodeAnalysis.NotNullWhen(true)] out V1.FromCoordinator? next)
+    {
+        lock (_gate)
+        {
+            if (_waiting.TryDequeue(out next))
+                return true;
+            _writing = false;
+            if (_complete)
+                _sent.TrySetResult();
+            return false;
+        }
     }
 }
