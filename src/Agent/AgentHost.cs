@@ -16,12 +16,16 @@ internal sealed class AgentHost
     private readonly SiteLedger _ledger;
     private readonly Serilog.ILogger _log;
     private readonly Backoff _backoff = new();
+    private readonly TimeProvider _time;
+    private readonly long _started;
 
-    public AgentHost(SiteSetup setup, SiteCore core, SiteLedger ledger, Serilog.ILogger log)
+    public AgentHost(SiteSetup setup, SiteCore core, SiteLedger ledger, TimeProvider time, Serilog.ILogger log)
     {
         _setup = setup;
         _core = core;
         _ledger = ledger;
+        _time = time;
+        _started = time.GetTimestamp();
         _log = log;
     }
 
@@ -31,6 +35,8 @@ internal sealed class AgentHost
         Farewell,
         RefusedForGood,
     }
+
+    private TimeSpan Now => _time.GetElapsedTime(_started);
 
     /// <summary>Runs until the coordinator says farewell or a stop is asked for.</summary>
     public async Task<int> RunAsync(V1.Dispatch.DispatchClient client, CancellationToken stop)
@@ -53,7 +59,7 @@ internal sealed class AgentHost
             _log.Information("Stopping as asked");
         }
 
-        var step = _core.Step(new SiteInput.Stopping());
+        var step = _core.Step(new SiteInput.Stopping(), Now);
         _ledger.Store(step.Charges, step.SetPoints);
         return code;
     }
@@ -64,7 +70,7 @@ internal sealed class AgentHost
         using var call = client.Join(cancellationToken: stop);
         try
         {
-            await call.RequestStream.WriteAsync(wire.WriteEnrol(_setup.Site, _core.Enrolment())).ConfigureAwait(false);
+            await call.RequestStream.WriteAsync(wire.WriteEnrol(_setup.Site, _core.Enrolment()), stop).ConfigureAwait(false);
             return await ListenAsync(call, wire).ConfigureAwait(false);
         }
         catch (RpcException failure) when (failure.StatusCode == StatusCode.PermissionDenied)
@@ -134,7 +140,7 @@ internal sealed class AgentHost
     private async Task DoAsync(
         AsyncDuplexStreamingCall<V1.FromSite, V1.FromCoordinator> call, CoordinatorWire wire, SiteInput input)
     {
-        var step = _core.Step(input);
+        var step = _core.Step(input, Now);
         _ledger.Store(step.Charges, step.SetPoints);
         switch (step.Reply)
         {

@@ -73,7 +73,7 @@ internal static class AgentProgram
         using var terminate = PosixSignalRegistration.Create(PosixSignal.SIGTERM, AskToStop);
         using var interrupt = PosixSignalRegistration.Create(PosixSignal.SIGINT, AskToStop);
         using var channel = Dial(options, identity, validator, log);
-        var host = new AgentHost(setup, core, ledger, log);
+        var host = new AgentHost(setup, core, ledger, TimeProvider.System, log);
         return await host.RunAsync(new V1.Dispatch.DispatchClient(channel), stop.Token).ConfigureAwait(false);
 
         void AskToStop(PosixSignalContext context)

@@ -81,7 +81,7 @@ public sealed class LocalDispatch
         };
         if (input is null)
             return;
-        var step = _sites[site].Step(input);
+        var step = _sites[site].Step(input, _now);
         _setPoints[site].AddRange(step.SetPoints);
         var reply = step.Reply;
         _sites[site].PrepareNoise();

@@ -15,13 +15,20 @@ namespace Halfvoice.Coordination;
 public sealed class SiteCore
 {
     /// <summary>
-    /// Rounds that a charge is reserved for ahead, so that one durable write serves them all: the first block of a cycle is
-    /// this long, later ones are as long as what went before, up to <see cref="LongestBlock"/>. A crash forfeits one block.
+    /// Rounds that a charge is reserved for ahead, so that one durable write serves them all. A crash forfeits one block, so
+    /// blocks are short where rounds are slow: one that is used up within a second is followed by one twice as long, one that
+    /// lasted over four seconds by one half as long.
     /// </summary>
     public const int FirstBlock = 16;
 
     /// <inheritdoc cref="FirstBlock"/>
+    public const int ShortestBlock = 8;
+
+    /// <inheritdoc cref="FirstBlock"/>
     public const int LongestBlock = 256;
+
+    private static readonly TimeSpan QuickBlock = TimeSpan.FromSeconds(1);
+    private static readonly TimeSpan SlowBlock = TimeSpan.FromSeconds(4);
 
     private readonly SiteSetup _setup;
     private readonly ISiteScheme _scheme;
@@ -34,6 +41,9 @@ public sealed class SiteCore
     private readonly double[] _values;
     private readonly double[] _outputs;
     private ChargeRow? _block;
+    private int _blockLength = FirstBlock;
+    private TimeSpan _blockBegan;
+    private TimeSpan _now;
     private int _usedOfBlock;
     private int _loadCycle;
     private long[]? _fixedSteps;
@@ -74,8 +84,11 @@ public sealed class SiteCore
     public SitePrivacy Privacy => _privacy;
 
     /// <summary>Takes one input; the result is valid until the next call.</summary>
-    public SiteStep Step(SiteInput input)
+    /// <param name="input">What happened.</param>
+    /// <param name="now">Time since some start; never runs backwards.</param>
+    public SiteStep Step(SiteInput input, TimeSpan now)
     {
+        _now = now;
         _out.Clear();
         switch (input)
         {
@@ -170,12 +183,13 @@ public sealed class SiteCore
         }
 
         SettleBlock();
-        var wanted = Math.Min(Math.Clamp(id.Round - 1, FirstBlock, LongestBlock), _setup.RoundCap - id.Round + 1);
+        var wanted = Math.Min(NextBlockLength(), _setup.RoundCap - id.Round + 1);
         var outcome = _book.TryReserve(id.Cycle, id.Round, Math.Max(1, Math.Min(wanted, _book.AnswersLeft(id.Cycle))));
         switch (outcome)
         {
             case Reservation reservation:
                 _block = reservation.Row;
+                _blockBegan = _now;
                 _usedOfBlock = 1;
                 _out.Charges.Add(reservation.Row);
                 return true;
@@ -187,6 +201,16 @@ public sealed class SiteCore
                 Refuse(id, RefusalReason.OutOfOrder, "This round lies before one that was granted already.");
                 return false;
         }
+    }
+
+    private int NextBlockLength()
+    {
+        var lasted = _now - _blockBegan;
+        if (_blockBegan > TimeSpan.Zero && lasted < QuickBlock)
+            _blockLength = Math.Min(LongestBlock, 2 * _blockLength);
+        else if (lasted > SlowBlock)
+            _blockLength = Math.Max(ShortestBlock, _blockLength / 2);
+        return _blockLength;
     }
 
     private void SettleBlock()
