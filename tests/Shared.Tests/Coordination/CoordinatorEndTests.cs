@@ -155,15 +155,15 @@ public class CoordinatorEndTests
         var buses = small.Network.Buses.Select(bus => bus with { Site = "s0" }).ToArray();
         var plan = small with
         {
-            Cycles = 5000,
+            Cycles = 20_000,
             Scheme = new SchemeSettings { Kind = SchemeKind.Angle },
             Network = new Network(100, buses, small.Network.Lines, small.Network.Generators),
             Loads = new Dictionary<string, LoadSeries> { ["s0"] = new LoadSeries([], [small.LoadMw(1)]) },
         };
         var run = PlainRun.Of(plan);
-        Assert.Equal(5000, run.Cycles.Count);
+        Assert.Equal(20_000, run.Cycles.Count);
         Assert.All(run.Cycles, cycle => Assert.Equal(CycleEnd.Settled, cycle.End));
-        Assert.Equal(run.Optimum(1).CostPerHour, run.CostPerHour(5000), 1e-3);
+        Assert.Equal(run.Optimum(1).CostPerHour, run.CostPerHour(20_000), 1e-3);
     }
 
     private static CoordinatorBench Resumed(CoordinatorSetup setup, RoundId last, bool cycleClosed, CoordinatorState state)
