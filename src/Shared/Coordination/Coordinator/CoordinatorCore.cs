@@ -92,6 +92,9 @@ public sealed class CoordinatorCore
                 throw new ArgumentOutOfRangeException(nameof(input));
         }
 
+        // A round in which nobody has anything to answer is over as it begins. A loop: a run may have 100,000 such cycles.
+        while (_phase == Phase.Asking && _asked == 0)
+            CloseRound(now);
         _out.Finished = _phase == Phase.Finished;
         return _out;
     }
@@ -173,7 +176,12 @@ public sealed class CoordinatorCore
         foreach (var seat in _seats)
             seat.Age = 0;
         _out.News.Add(new CoordinatorNews.CycleBegan(cycle));
-        BeginRound(now);
+
+        // After a crash in the last round allowed, which is not asked again, there is none left to ask.
+        if (afterRound >= _setup.RoundCap)
+            EndCycle(CycleEnd.RoundCap, now);
+        else
+            BeginRound(now);
     }
 
     private void BeginRound(TimeSpan now)
@@ -207,8 +215,6 @@ public sealed class CoordinatorCore
         var state = new CoordinatorState([.. _scheme.Consensus], [.. _scheme.Dual]);
         _out.Store.Add(new JournalEntry.RoundAsked(_id, asks, state));
         WakeAt = now + TimeSpan.FromSeconds(_setup.DeadlineSeconds);
-        if (_asked == 0)
-            CloseRound(now);
     }
 
     private void Hear(int site, Answer answer, TimeSpan now)

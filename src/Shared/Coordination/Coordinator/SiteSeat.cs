@@ -38,11 +38,8 @@ internal sealed class SiteSeat
         _boundSteps = steps < long.MaxValue ? (long)steps : long.MaxValue;
     }
 
-    public void Leave()
-    {
-        Joined = false;
-        Fresh = false;
-    }
+    /// <summary>What the site answered before it left stays an answer of its round.</summary>
+    public void Leave() => Joined = false;
 
     /// <summary>Turns steps into values; false where a number lies outside the public bounds.</summary>
     public bool TryRead(Answer answer, out double[] values)

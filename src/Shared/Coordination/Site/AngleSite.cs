@@ -12,6 +12,10 @@ public sealed class AngleSite : ISiteScheme
     // At the end of a cycle the copies are held at the consensus this many times as hard; plants follow.
     private const double HoldFactor = 1e3;
 
+    // An ask may be chosen to break the solver, and whether it does could depend on the loads. Anchors are therefore cut at a
+    // public bound, four times that of the answers; the sensitivity holds for every anchor, so for the cut ones too.
+    private const double AnchorBoundRad = 4 * SetupBuilder.AngleBoundRad;
+
     private readonly SiteSetup _setup;
     private readonly NodalAngleProblem? _nodal;
     private readonly SupplyCurve? _supply;
@@ -49,8 +53,7 @@ public sealed class AngleSite : ISiteScheme
 
     public void Solve(ReadOnlySpan<double> loadMw, Ask ask, Span<double> values)
     {
-        for (var c = 0; c < _anchor.Length; c++)
-            _anchor[c] = ask.Consensus[c] - (ask.Dual[c] / _setup.Copies[c].WeightPerRad2h);
+        PlaceAnchors(ask.Consensus, ask.Dual, 1);
         if (_nodal is not null)
             _nodal.Solve(loadMw[0], _anchor, values);
         else
@@ -66,17 +69,24 @@ public sealed class AngleSite : ISiteScheme
     {
         if (_nodal is null)
         {
-            for (var c = 0; c < _anchor.Length; c++)
-                _anchor[c] = outcome.Consensus[c] - (outcome.Dual[c] / (HoldFactor * _setup.Copies[c].WeightPerRad2h));
+            PlaceAnchors(outcome.Consensus, outcome.Dual, HoldFactor);
             _held!.Solve(loadMw, _anchor, _copies, outputMw);
             return;
         }
 
         var away = 0.0;
         foreach (var line in NodalLines())
-            away += line.SusceptanceMwPerRad * (outcome.Consensus[0] - outcome.Consensus[line.Copy]);
+            away += line.SusceptanceMwPerRad * (Cut(outcome.Consensus[0]) - Cut(outcome.Consensus[line.Copy]));
         _supply!.Split(away + loadMw[0], outputMw);
     }
+
+    private void PlaceAnchors(double[] consensus, double[] dual, double factor)
+    {
+        for (var c = 0; c < _anchor.Length; c++)
+            _anchor[c] = Cut(consensus[c] - (dual[c] / (factor * _setup.Copies[c].WeightPerRad2h)));
+    }
+
+    private static double Cut(double angleRad) => Math.Clamp(angleRad, -AnchorBoundRad, AnchorBoundRad);
 
     /// <summary>Lines as seen from the one own bus, local node 0; copies come in the order of local nodes.</summary>
     private NodalLine[] NodalLines() => _setup.Lines

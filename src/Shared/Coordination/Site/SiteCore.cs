@@ -121,9 +121,15 @@ public sealed class SiteCore
             return;
         }
 
-        if (ask.Id.Round > _setup.RoundCap)
+        if (ask.Id.Cycle < 1 || ask.Id.Round < 1 || ask.Id.Round > _setup.RoundCap)
         {
-            Refuse(ask.Id, RefusalReason.OutOfRange, $"The plan allows {_setup.RoundCap} rounds a cycle.");
+            Refuse(ask.Id, RefusalReason.OutOfRange, $"Cycles count from 1, and the plan allows rounds 1 to {_setup.RoundCap}.");
+            return;
+        }
+
+        if (!AllFinite(ask.Consensus) || !AllFinite(ask.Dual))
+        {
+            Refuse(ask.Id, RefusalReason.OutOfRange, "A number of the ask is not finite.");
             return;
         }
 
@@ -161,14 +167,14 @@ public sealed class SiteCore
     {
         var once = _scheme.Adjustable.Count == 0;
         if (once && _fixedCycle == ask.Id.Cycle && _fixedSteps is not null)
-            return _fixedSteps;
+            return ask.Everything ? _fixedSteps : [];
         if (!Charge(ask.Id))
             return null;
         _scheme.Solve(_loadMw, ask, _values);
-        var steps = _privacy.Release(_values, ask.Everything);
+        var steps = _privacy.Release(_values, once || ask.Everything);
         if (once)
             (_fixedSteps, _fixedCycle) = (steps, ask.Id.Cycle);
-        return steps;
+        return once && !ask.Everything ? [] : steps;
     }
 
     /// <summary>Sees to it that the round lies in a reserved block; the row, if a new one is needed, goes out to be stored first.</summary>
@@ -231,6 +237,12 @@ public sealed class SiteCore
             return;
         }
 
+        if (!AllFinite(outcome.Consensus) || !AllFinite(outcome.Dual))
+        {
+            Refuse(new RoundId(outcome.Cycle, outcome.Rounds), RefusalReason.OutOfRange, "A number of the outcome is not finite.");
+            return;
+        }
+
         if (outcome.Rounds == 0 || !ReadLoads(outcome.Cycle))
             return;
         _scheme.Dispatch(_loadMw, outcome, _outputs);
@@ -242,11 +254,14 @@ public sealed class SiteCore
     {
         if (_loadCycle == cycle)
             return true;
-        if (!_loads.TryRead(cycle, _loadMw))
+        _loadCycle = 0;
+        if (!_loads.TryRead(cycle, _loadMw) || !AllFinite(_loadMw))
             return false;
         _loadCycle = cycle;
         return true;
     }
+
+    private static bool AllFinite(double[] values) => Array.TrueForAll(values, double.IsFinite);
 
     private void Reply(Ask ask, long[] steps) => _out.Reply = new SiteReply.Answered(new Answer(ask.Id, ask.Everything, steps));
 
