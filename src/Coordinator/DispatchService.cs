@@ -1,3 +1,4 @@
+using Google.Protobuf;
 using Grpc.Core;
 using Halfvoice.Coordination;
 using Halfvoice.Wire;
@@ -23,8 +24,7 @@ internal sealed class DispatchService : V1.Dispatch.DispatchBase
         IAsyncStreamReader<V1.FromSite> requestStream, IServerStreamWriter<V1.FromCoordinator> responseStream, ServerCallContext context)
     {
         var site = _identity.SiteOf(context);
-        var index = _host.IndexOf(site)
-            ?? throw new RpcException(new Status(StatusCode.PermissionDenied, "The plan has no site of the certificate's name."));
+        var index = _host.IndexOf(site) ?? throw _identity.NotOfThePlan(site);
         var stream = new SiteStream(index, site);
         var write = WriteAllAsync(stream, responseStream, context.CancellationToken);
         var read = ReadAllAsync(stream, requestStream, context.CancellationToken);
@@ -33,14 +33,16 @@ internal sealed class DispatchService : V1.Dispatch.DispatchBase
             // Whichever ends first ends the stream: the site hung up, or we have nothing more to say to it. In the second case the
             // site gets a moment to read to the end and hang up, because returning at once would cut off what is under way.
             var first = await Task.WhenAny(write, read).ConfigureAwait(false);
-            if (first == read)
+            if (first == write)
             {
-                stream.Complete();
-                await write.ConfigureAwait(false);
+                await read.WaitAsync(HangUpGrace, context.CancellationToken).ConfigureAwait(false);
             }
             else
             {
-                await read.WaitAsync(HangUpGrace, context.CancellationToken).ConfigureAwait(false);
+                // After a faulty message the host still has its refusal to send and completes the stream itself.
+                if (!await read.ConfigureAwait(false))
+                    stream.Complete();
+                await write.WaitAsync(HangUpGrace, context.CancellationToken).ConfigureAwait(false);
             }
 
             await first.ConfigureAwait(false);
@@ -62,23 +64,46 @@ internal sealed class DispatchService : V1.Dispatch.DispatchBase
             await writer.WriteAsync(message, cancel).ConfigureAwait(false);
     }
 
-    private async Task ReadAllAsync(SiteStream stream, IAsyncStreamReader<V1.FromSite> reader, CancellationToken cancel)
+    /// <returns>True when it ended at a faulty message, false when the site said that it was done.</returns>
+    private async Task<bool> ReadAllAsync(SiteStream stream, IAsyncStreamReader<V1.FromSite> reader, CancellationToken cancel)
     {
         var enrolled = false;
-        while (await reader.MoveNext(cancel).ConfigureAwait(false))
+        while (true)
         {
-            stream.CountUp(reader.Current);
-            var (message, fault) = stream.Wire.Read(reader.Current);
-            if (message is FromSiteMessage.Farewell)
-                return;
-            var next = fault is not null
-                ? new HostEvent.Faulty(stream, fault.At(RoundId.None))
-                : Translate(stream, message!, ref enrolled);
-            if (next is not null)
-                await _host.Events.Writer.WriteAsync(next, cancel).ConfigureAwait(false);
+            HostEvent? next;
+            try
+            {
+                if (!await reader.MoveNext(cancel).ConfigureAwait(false))
+                    return false;
+                next = Take(stream, reader.Current, ref enrolled);
+                if (next is null)
+                    continue;
+            }
+            catch (Exception unreadable) when (IsUnreadable(unreadable))
+            {
+                next = Fault(stream, RefusalReason.Malformed, $"The message is no {nameof(V1.FromSite)}, or is larger than {WireContract.MaxMessageBytes} bytes.");
+            }
+
+            if (next is HostEvent.Leaving)
+                return false;
+            await _host.Events.Writer.WriteAsync(next, cancel).ConfigureAwait(false);
             if (next is HostEvent.Faulty)
-                return;
+                return true;
         }
+    }
+
+    /// <summary>What gRPC throws at a message that is too large, compressed in an unknown way, or no message of this contract.</summary>
+    private static bool IsUnreadable(Exception failure) => failure is InvalidProtocolBufferException
+        || failure is RpcException { StatusCode: StatusCode.ResourceExhausted or StatusCode.Internal or StatusCode.Unimplemented };
+
+    /// <summary>What the host must hear of a message; null for nothing.</summary>
+    private static HostEvent? Take(SiteStream stream, V1.FromSite received, ref bool enrolled)
+    {
+        stream.CountUp(received);
+        var (message, fault) = stream.Wire.Read(received);
+        if (message is FromSiteMessage.Farewell)
+            return new HostEvent.Leaving(stream);
+        return fault is not null ? new HostEvent.Faulty(stream, fault.At(RoundId.None)) : Translate(stream, message!, ref enrolled);
     }
 
     private static HostEvent? Translate(SiteStream stream, FromSiteMessage message, ref bool enrolled)
