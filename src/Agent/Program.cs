@@ -22,6 +22,16 @@ internal static class AgentProgram
 {
     public static async Task<int> RunAsync(AgentOptions options)
     {
+        try
+        {
+            Directory.CreateDirectory(options.State);
+        }
+        catch (Exception unusable) when (unusable is IOException or UnauthorizedAccessException)
+        {
+            await Console.Error.WriteLineAsync($"Cannot start: the state folder cannot be used: {unusable.Message}").ConfigureAwait(false);
+            return ExitCodes.WrongSetup;
+        }
+
         await using var log = OpenLog(options.State);
         try
         {
@@ -42,7 +52,6 @@ internal static class AgentProgram
 
     private static Serilog.Core.Logger OpenLog(string state)
     {
-        Directory.CreateDirectory(state);
         return new LoggerConfiguration()
             .MinimumLevel.Information()
             .WriteTo.File(new CompactJsonFormatter(), Path.Combine(state, "agent.jsonl"), fileSizeLimitBytes: 16L << 20, rollOnFileSizeLimit: true, retainedFileCountLimit: 4)
@@ -53,19 +62,19 @@ internal static class AgentProgram
 
     private static async Task<int> AnswerAsync(AgentOptions options, Serilog.Core.Logger log)
     {
-        var setup = SetupJson.ReadSite(await File.ReadAllTextAsync(Path.Combine(options.Bundle, "site.json")).ConfigureAwait(false));
+        var setup = BundleFile.Read(options.Bundle, "site.json", path => SetupJson.ReadSite(File.ReadAllText(path)));
         log.Information("Shadow mode: set-points are computed and logged, and written to no equipment");
         if (setup.Privacy.Mechanism == MechanismKind.None)
             log.Warning("Mechanism none: this site's answers are NOT veiled, and its loads can be recovered from them");
-        var loads = ReadLoads(Path.Combine(options.Bundle, "loads.csv"), setup);
+        var loads = BundleFile.Read(options.Bundle, "loads.csv", path => ReadLoads(path, setup));
         using var ledger = SiteLedger.Open(Path.Combine(options.State, "ledger.sqlite"), setup, TimeProvider.System);
         var core = new SiteCore(setup, new SeriesReadings(loads), new OperatingSystemNoise(), ledger.ReadCharges(), out var forfeited);
         ledger.Store(forfeited, []);
         if (forfeited.Count > 0)
             log.Warning("Forfeited {Reservations} reservations that were open when the last agent ended", forfeited.Count);
 
-        using var authority = X509CertificateLoader.LoadCertificateFromFile(Path.Combine(options.Bundle, "authority.pem"));
-        using var identity = X509Certificate2.CreateFromPemFile(Path.Combine(options.Bundle, "identity.pem"), Path.Combine(options.Bundle, "identity.key"));
+        using var authority = BundleFile.Read(options.Bundle, "authority.pem", X509CertificateLoader.LoadCertificateFromFile);
+        using var identity = BundleFile.Read(options.Bundle, "identity.pem", path => X509Certificate2.CreateFromPemFile(path, Path.ChangeExtension(path, "key")));
         var revoked = new RevocationListFile(Path.Combine(options.Bundle, "revoked.crl"), authority);
         var validator = new PeerValidator(authority, () => revoked.Current, TimeProvider.System);
         using var stop = new CancellationTokenSource();

@@ -24,6 +24,8 @@ internal sealed class SiteLedger : IDisposable
           PRIMARY KEY (cycle, generator)) WITHOUT ROWID;
         """;
 
+    private const string Damaged = "The ledger is damaged. The site answers nothing until it is restored from its last sound copy.";
+
     private readonly SqliteConnection _connection;
     private readonly TimeProvider _time;
 
@@ -48,15 +50,10 @@ internal sealed class SiteLedger : IDisposable
             ledger.CheckMeta("site", setup.Site, "another site");
             return ledger;
         }
-        catch (SqliteException locked) when (locked.SqliteErrorCode is 5 or 6)
+        catch (SqliteException unusable) when (WhyUnusable(unusable) is not null)
         {
             connection.Dispose();
-            throw new InvalidDataException("Another agent has this ledger open. One site runs one agent.", locked);
-        }
-        catch (SqliteException damaged) when (damaged.SqliteErrorCode is 11 or 26)
-        {
-            connection.Dispose();
-            throw new InvalidDataException("The ledger is damaged. The site answers nothing until it is restored from its last sound copy.", damaged);
+            throw new InvalidDataException(WhyUnusable(unusable), unusable);
         }
         catch
         {
@@ -65,7 +62,25 @@ internal sealed class SiteLedger : IDisposable
         }
     }
 
+    /// <exception cref="InvalidDataException">A row or the file is damaged.</exception>
     public IReadOnlyList<ChargeRow> ReadCharges()
+    {
+        try
+        {
+            return ReadRows();
+        }
+        catch (SqliteException unusable) when (WhyUnusable(unusable) is not null)
+        {
+            throw new InvalidDataException(WhyUnusable(unusable), unusable);
+        }
+        catch (Exception damaged) when (damaged is InvalidCastException or OverflowException or FormatException)
+        {
+            // SQLite keeps whatever was put into a column, whatever the column's type.
+            throw new InvalidDataException(Damaged, damaged);
+        }
+    }
+
+    private List<ChargeRow> ReadRows()
     {
         var rows = new List<ChargeRow>();
         using var command = _connection.CreateCommand();
@@ -105,6 +120,19 @@ internal sealed class SiteLedger : IDisposable
     }
 
     public void Dispose() => _connection.Dispose();
+
+    /// <summary>
+    /// What a user can do something about, in words; null for the rest. The numbers are SQLite's primary result codes: 1 error (here:
+    /// tables that are none of ours), 5 busy, 6 locked, 11 corrupt, 14 cannot open, 26 not a database.
+    /// </summary>
+    private static string? WhyUnusable(SqliteException failure) => failure.SqliteErrorCode switch
+    {
+        5 or 6 => "Another agent has this ledger open. One site runs one agent.",
+        1 => "The file in the ledger's place is not a ledger of this version of the agent. Give the agent its own state folder.",
+        11 or 26 => Damaged,
+        14 => "The ledger cannot be opened: something else is in its place, or the state folder may not be written.",
+        _ => null,
+    };
 
     private void Execute(string sql)
     {

@@ -35,4 +35,11 @@ internal sealed class CallerIdentity
         _log.Warning("Refused a call: {Reason}. {Explanation}", verdict.Refusal, verdict.Explanation);
         throw new RpcException(new Status(StatusCode.PermissionDenied, $"Only a site may join ({verdict.Refusal})."));
     }
+
+    /// <summary>What a caller hears whose certificate holds and names a site that the plan does not have.</summary>
+    public RpcException NotOfThePlan(string site)
+    {
+        _log.Warning("Refused a call: {Reason}. The plan has no site {Site}", "UnknownSite", site);
+        return new RpcException(new Status(StatusCode.PermissionDenied, "The plan has no site of the certificate's name."));
+    }
 }

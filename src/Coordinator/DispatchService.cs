@@ -1,3 +1,4 @@
+using Google.Protobuf;
 using Grpc.Core;
 using Halfvoice.Coordination;
 using Halfvoice.Wire;
@@ -23,8 +24,7 @@ internal sealed class DispatchService : V1.Dispatch.DispatchBase
         IAsyncStreamReader<V1.FromSite> requestStream, IServerStreamWriter<V1.FromCoordinator> responseStream, ServerCallContext context)
     {
         var site = _identity.SiteOf(context);
-        var index = _host.IndexOf(site)
-            ?? throw new RpcException(new Status(StatusCode.PermissionDenied, "The plan has no site of the certificate's name."));
+        var index = _host.IndexOf(site) ?? throw _identity.NotOfThePlan(site);
         var stream = new SiteStream(index, site, responseStream);
         var read = ReadAllAsync(stream, requestStream, context.CancellationToken);
         try
@@ -46,19 +46,31 @@ internal sealed class DispatchService : V1.Dispatch.DispatchBase
         }
     }
 
+    /// <summary>Reads until the site hangs up, says farewell, or sends something that ends its stream.</summary>
     private async Task ReadAllAsync(SiteStream stream, IAsyncStreamReader<V1.FromSite> reader, CancellationToken cancel)
     {
         var enrolled = false;
-        while (await reader.MoveNext(cancel).ConfigureAwait(false))
+        try
         {
-            stream.CountUp(reader.Current);
-            var (message, fault) = stream.Wire.Read(reader.Current);
-            if (fault is not null)
-                _host.Fault(stream, fault.At(RoundId.None));
-            if (fault is not null || message is FromSiteMessage.Farewell || !Hand(stream, message!, ref enrolled))
-                return;
+            while (await reader.MoveNext(cancel).ConfigureAwait(false))
+            {
+                stream.CountUp(reader.Current);
+                var (message, fault) = stream.Wire.Read(reader.Current);
+                if (fault is not null)
+                    _host.Fault(stream, fault.At(RoundId.None));
+                if (fault is not null || message is FromSiteMessage.Farewell || !Hand(stream, message!, ref enrolled))
+                    return;
+            }
+        }
+        catch (Exception unreadable) when (IsUnreadable(unreadable))
+        {
+            Fault(stream, RefusalReason.Malformed, $"The message is no {nameof(V1.FromSite)}, or is larger than {WireContract.MaxMessageBytes} bytes.");
         }
     }
+
+    /// <summary>What gRPC throws at a message that is too large, compressed in an unknown way, or no message of this contract.</summary>
+    private static bool IsUnreadable(Exception failure) => failure is InvalidProtocolBufferException
+        || failure is RpcException { StatusCode: StatusCode.ResourceExhausted or StatusCode.Internal or StatusCode.Unimplemented };
 
     /// <summary>Hands a checked message to the host; false where it came out of turn and the stream ends.</summary>
     private bool Hand(SiteStream stream, FromSiteMessage message, ref bool enrolled)

@@ -33,10 +33,10 @@ internal sealed class Journal : IDisposable
     }
 
     /// <summary>Opens or creates the journal.</summary>
-    /// <exception cref="InvalidDataException">The file belongs to another plan or another version.</exception>
+    /// <exception cref="InvalidDataException">The file belongs to another plan or version, is damaged, or another coordinator has it open.</exception>
     public static Journal Open(string path, CoordinatorSetup setup, TimeProvider time)
     {
-        var connection = new SqliteConnection(new SqliteConnectionStringBuilder { DataSource = path, Pooling = false }.ToString());
+        var connection = new SqliteConnection(new SqliteConnectionStringBuilder { DataSource = path, Pooling = false, DefaultTimeout = 1 }.ToString());
         try
         {
             connection.Open();
@@ -46,6 +46,11 @@ internal sealed class Journal : IDisposable
             CheckMeta(connection, "setup_digest", setup.SetupDigest, "another plan");
             return new Journal(connection, setup, time);
         }
+        catch (SqliteException unusable) when (WhyUnusable(unusable) is not null)
+        {
+            connection.Dispose();
+            throw new InvalidDataException(WhyUnusable(unusable), unusable);
+        }
         catch
         {
             connection.Dispose();
@@ -54,7 +59,20 @@ internal sealed class Journal : IDisposable
     }
 
     /// <summary>Where the journal ends, or null where it is new.</summary>
+    /// <exception cref="InvalidDataException">The file is damaged.</exception>
     public (RoundId Last, bool CycleClosed, CoordinatorState State)? ReadEnd()
+    {
+        try
+        {
+            return ReadLast();
+        }
+        catch (SqliteException unusable) when (WhyUnusable(unusable) is not null)
+        {
+            throw new InvalidDataException(WhyUnusable(unusable), unusable);
+        }
+    }
+
+    private (RoundId Last, bool CycleClosed, CoordinatorState State)? ReadLast()
     {
         var asked = ReadState("SELECT cycle, round, consensus, dual FROM asked ORDER BY cycle DESC, round DESC LIMIT 1");
         var closed = ReadState("SELECT cycle, rounds, consensus, dual FROM cycles ORDER BY cycle DESC LIMIT 1");
@@ -84,6 +102,19 @@ internal sealed class Journal : IDisposable
             command.Dispose();
         _connection.Dispose();
     }
+
+    /// <summary>
+    /// What a user can do something about, in words; null for the rest. The numbers are SQLite's primary result codes: 1 error (here:
+    /// tables that are none of ours), 5 busy, 6 locked, 11 corrupt, 14 cannot open, 26 not a database.
+    /// </summary>
+    private static string? WhyUnusable(SqliteException failure) => failure.SqliteErrorCode switch
+    {
+        5 or 6 => "Another coordinator has this journal open. A plan has one coordinator.",
+        1 => "The file in the journal's place is not a journal of this version of the coordinator. Give it an empty state folder.",
+        11 or 26 => "The journal is damaged. Restore it from its last sound copy; with an empty state folder sites refuse the rounds that they answered before.",
+        14 => "The journal cannot be opened: something else is in its place, or the state folder may not be written.",
+        _ => null,
+    };
 
     private static void Execute(SqliteConnection connection, string sql)
     {

@@ -23,6 +23,16 @@ internal static class CoordinatorProgram
 {
     public static async Task<int> RunAsync(CoordinatorOptions options)
     {
+        try
+        {
+            Directory.CreateDirectory(options.State);
+        }
+        catch (Exception unusable) when (unusable is IOException or UnauthorizedAccessException)
+        {
+            await Console.Error.WriteLineAsync($"Cannot start: the state folder cannot be used: {unusable.Message}").ConfigureAwait(false);
+            return ExitCodes.WrongSetup;
+        }
+
         await using var log = OpenLog(options.State);
         try
         {
@@ -43,7 +53,6 @@ internal static class CoordinatorProgram
 
     private static Serilog.Core.Logger OpenLog(string state)
     {
-        Directory.CreateDirectory(state);
         return new LoggerConfiguration()
             .MinimumLevel.Information()
             .WriteTo.File(new CompactJsonFormatter(), Path.Combine(state, "coordinator.jsonl"), fileSizeLimitBytes: 64L << 20, rollOnFileSizeLimit: true, retainedFileCountLimit: 4)
@@ -54,7 +63,7 @@ internal static class CoordinatorProgram
 
     private static async Task<int> ServeAsync(CoordinatorOptions options, Serilog.Core.Logger log)
     {
-        var setup = SetupJson.ReadCoordinator(await File.ReadAllTextAsync(Path.Combine(options.Bundle, "coordinator.json")).ConfigureAwait(false));
+        var setup = BundleFile.Read(options.Bundle, "coordinator.json", path => SetupJson.ReadCoordinator(File.ReadAllText(path)));
         using var journal = Journal.Open(Path.Combine(options.State, "journal.sqlite"), setup, TimeProvider.System);
         var core = new CoordinatorCore(setup);
         if (journal.ReadEnd() is { } end)
@@ -65,8 +74,8 @@ internal static class CoordinatorProgram
 
         using var progress = new ProgressLines(Console.OpenStandardOutput(), setup);
         using var host = new DispatchHost(setup, core, journal, progress, TimeProvider.System, log);
-        using var authority = X509CertificateLoader.LoadCertificateFromFile(Path.Combine(options.Bundle, "authority.pem"));
-        using var identity = X509Certificate2.CreateFromPemFile(Path.Combine(options.Bundle, "identity.pem"), Path.Combine(options.Bundle, "identity.key"));
+        using var authority = BundleFile.Read(options.Bundle, "authority.pem", X509CertificateLoader.LoadCertificateFromFile);
+        using var identity = BundleFile.Read(options.Bundle, "identity.pem", path => X509Certificate2.CreateFromPemFile(path, Path.ChangeExtension(path, "key")));
         var revoked = new RevocationListFile(Path.Combine(options.Bundle, "revoked.crl"), authority);
         var caller = new CallerIdentity(new PeerValidator(authority, () => revoked.Current, TimeProvider.System), log);
         await using var app = BuildServer(options, host, caller, identity, log);
