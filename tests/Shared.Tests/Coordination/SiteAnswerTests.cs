@@ -60,11 +60,11 @@ public class SiteAnswerTests
         bench.Ask(1, 2, 3, 20);
         bench.Restart();
         Assert.Equal(Halfvoice.Privacy.ChargeState.Forfeited, Assert.Single(bench.Ledger.Values).State);
-        Assert.Equal(new RoundId(1, 32), bench.Core.Enrolment().AnsweredThrough);
-        for (var round = 1; round <= 32; round++)
+        Assert.Equal(new RoundId(1, 16), bench.Core.Enrolment().AnsweredThrough);
+        for (var round = 1; round <= 16; round++)
             Assert.Equal(RefusalReason.Forfeited, bench.Ask(1, round, 3, 20).Refusal.Reason);
-        Assert.Equal(new RoundId(1, 33), bench.Ask(1, 33, 3, 20).Answer.Id);
-        Assert.Equal(50, bench.AnswersCharged);
+        Assert.Equal(new RoundId(1, 17), bench.Ask(1, 17, 3, 20).Answer.Id);
+        Assert.Equal(32, bench.AnswersCharged);
     }
 
     [Fact]

@@ -37,6 +37,9 @@ internal sealed class SiteBench : ILoadReadings
 
     public bool HasReading { get; set; } = true;
 
+    /// <summary>The site's clock; stands still unless a test moves it.</summary>
+    public TimeSpan Now { get; set; } = TimeSpan.FromSeconds(1);
+
     /// <summary>Spent and reserved, in answers.</summary>
     public int AnswersCharged => Ledger.Values.Sum(row => row.ChargedAnswers);
 
@@ -55,7 +58,7 @@ internal sealed class SiteBench : ILoadReadings
 
     public SiteDone Step(SiteInput input)
     {
-        var step = _core.Step(input);
+        var step = _core.Step(input, Now);
         foreach (var row in step.Charges)
             Ledger[row.Id] = row;
         var done = new SiteDone([.. step.Charges], [.. step.SetPoints], step.Reply);

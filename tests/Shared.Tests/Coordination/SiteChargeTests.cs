@@ -12,19 +12,32 @@ public class SiteChargeTests
     {
         var bench = new SiteBench(SiteBench.Noisy(), "s0");
         var row = Assert.Single(bench.Ask(1, 1).Charges);
-        Assert.Equal((1, 1, SiteCore.ReserveBlock, ChargeState.Open), (row.Cycle, row.FirstRound, row.Answers, row.State));
+        Assert.Equal((1, 1, SiteCore.FirstBlock, ChargeState.Open), (row.Cycle, row.FirstRound, row.Answers, row.State));
         Assert.Equal(EpsilonUnits.PerOne / 50, row.EpsilonUnitsEach);
-        for (var round = 2; round <= SiteCore.ReserveBlock; round++)
+        for (var round = 2; round <= SiteCore.FirstBlock; round++)
         {
             var done = bench.Ask(1, round);
             Assert.Equal(new RoundId(1, round), done.Answer.Id);
             Assert.Empty(done.Charges);
         }
 
-        var next = bench.Ask(1, 33).Charges;
+        var next = bench.Ask(1, 17).Charges;
         Assert.Equal([ChargeState.Settled, ChargeState.Open], next.Select(r => r.State));
-        Assert.Equal((row.Id, 32), (next[0].Id, next[0].Used));
-        Assert.Equal((33, 18), (next[1].FirstRound, next[1].Answers));
+        Assert.Equal((row.Id, 16), (next[0].Id, next[0].Used));
+        Assert.Equal((17, 32), (next[1].FirstRound, next[1].Answers));
+    }
+
+    [Theory]
+    [InlineData(0.9, 32)]
+    [InlineData(1.1, 16)]
+    [InlineData(4.1, 8)]
+    public void Blocks_grow_where_rounds_are_quick_and_shrink_where_they_are_slow(double blockSeconds, int nextLength)
+    {
+        var bench = new SiteBench(SiteBench.Noisy(roundCap: 200), "s0");
+        for (var round = 1; round <= SiteCore.FirstBlock; round++)
+            bench.Ask(1, round);
+        bench.Now += TimeSpan.FromSeconds(blockSeconds);
+        Assert.Equal(nextLength, bench.Ask(1, SiteCore.FirstBlock + 1).Charges[^1].Answers);
     }
 
     [Fact]
@@ -43,7 +56,7 @@ public class SiteChargeTests
         var bench = new SiteBench(SiteBench.Noisy(), "s0");
         for (var round = 1; round <= 5; round++)
             bench.Ask(1, round);
-        Assert.Equal(32, bench.AnswersCharged);
+        Assert.Equal(16, bench.AnswersCharged);
         var done = endOfCycle ? bench.End(1, 5) : bench.Step(new SiteInput.Stopping());
         var row = Assert.Single(done.Charges);
         Assert.Equal((1L, ChargeState.Settled, 5), (row.Id, row.State, row.Used));
