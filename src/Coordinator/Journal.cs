@@ -14,6 +14,8 @@ internal sealed class Journal : IDisposable
     private readonly SqliteConnection _connection;
     private readonly CoordinatorSetup _setup;
     private readonly TimeProvider _time;
+    private readonly SqliteCommand _begin;
+    private readonly SqliteCommand _commit;
     private readonly SqliteCommand _asked;
     private readonly SqliteCommand _closed;
     private readonly SqliteCommand _cycle;
@@ -25,6 +27,9 @@ internal sealed class Journal : IDisposable
         _connection = connection;
         _setup = setup;
         _time = time;
+        // Prepared once: a transaction object of the library would parse and prepare both every round.
+        _begin = Prepare("BEGIN", 0);
+        _commit = Prepare("COMMIT", 0);
         _asked = Prepare("INSERT INTO asked VALUES ($1,$2,$3,$4,$5,$6,$7)", 7);
         _closed = Prepare("INSERT INTO closed VALUES ($1,$2,$3,$4,$5,$6,$7,$8,$9,$10,$11,$12,$13)", 13);
         _cycle = Prepare("INSERT INTO cycles VALUES ($1,$2,$3,$4,$5,$6,$7,$8,$9,$10,$11,$12,$13,$14)", 14);
@@ -89,16 +94,16 @@ internal sealed class Journal : IDisposable
     {
         if (entries.Count == 0)
             return;
-        using var transaction = _connection.BeginTransaction();
+        _begin.ExecuteNonQuery();
         var at = _time.GetUtcNow().ToString("O", CultureInfo.InvariantCulture);
         foreach (var entry in entries)
-            Store(entry, at, bytes, transaction);
-        transaction.Commit();
+            Store(entry, at, bytes);
+        _commit.ExecuteNonQuery();
     }
 
     public void Dispose()
     {
-        foreach (var command in new[] { _asked, _closed, _cycle, _event, _site })
+        foreach (var command in new[] { _begin, _commit, _asked, _closed, _cycle, _event, _site })
             command.Dispose();
         _connection.Dispose();
     }
@@ -133,46 +138,46 @@ internal sealed class Journal : IDisposable
             throw new InvalidDataException($"The journal was written for {whose}. Give the coordinator an empty state folder, or the bundle that it was started with.");
     }
 
-    private void Store(JournalEntry entry, string at, Func<(long Down, long Up)> bytes, SqliteTransaction transaction)
+    private void Store(JournalEntry entry, string at, Func<(long Down, long Up)> bytes)
     {
         switch (entry)
         {
             case JournalEntry.RoundAsked asked:
-                Run(_asked, transaction, asked.Id.Cycle, asked.Id.Round, at,
+                Run(_asked, asked.Id.Cycle, asked.Id.Round, at,
                     Bytes(asked.Asks.Select(pair => pair.Site).ToArray()),
                     asked.Asks.Select(pair => (byte)(pair.Ask.Everything ? 1 : 0)).ToArray(),
                     Bytes(asked.State.Consensus), Bytes(asked.State.Dual));
                 break;
             case JournalEntry.RoundClosed closed:
                 var m = closed.Measure;
-                Run(_closed, transaction, closed.Id.Cycle, closed.Id.Round, at, closed.Answers.Count, closed.Answers.Count + closed.Held.Count,
+                Run(_closed, closed.Id.Cycle, closed.Id.Round, at, closed.Answers.Count, closed.Answers.Count + closed.Held.Count,
                     Pack(closed.Answers), Bytes(closed.Held.ToArray()), m.MismatchMw, m.PriceMovePerMwh, m.MismatchFloorMw,
                     m.PriceFloorPerMwh, m.Window, closed.Seconds);
                 break;
             case JournalEntry.CycleClosed cycle:
                 var (down, up) = bytes();
-                Run(_cycle, transaction, cycle.Cycle, at, cycle.End.ToString(), cycle.Rounds, cycle.Seconds, cycle.Measure.MismatchMw,
+                Run(_cycle, cycle.Cycle, at, cycle.End.ToString(), cycle.Rounds, cycle.Seconds, cycle.Measure.MismatchMw,
                     cycle.Measure.PriceMovePerMwh, cycle.Measure.MismatchFloorMw, cycle.Measure.PriceFloorPerMwh, cycle.UnservedMw,
                     down, up, Bytes(cycle.State.Consensus), Bytes(cycle.State.Dual));
                 break;
             case JournalEntry.SiteJoined joined:
-                Run(_site, transaction, NameOf(joined.Site), joined.Enrol.LatticeExponent, joined.Enrol.NoiseScale, joined.Enrol.EpsilonPerAnswer);
-                Event("joined", joined.Site, RoundId.None, null, null, at, transaction);
+                Run(_site, NameOf(joined.Site), joined.Enrol.LatticeExponent, joined.Enrol.NoiseScale, joined.Enrol.EpsilonPerAnswer);
+                Event("joined", joined.Site, RoundId.None, null, null, at);
                 break;
             case JournalEntry.SiteLeft left:
-                Event("left", left.Site, RoundId.None, null, null, at, transaction);
+                Event("left", left.Site, RoundId.None, null, null, at);
                 break;
             case JournalEntry.Refused refused:
                 Event(refused.BySite ? "refused by site" : "refused", refused.Site, refused.Refusal.Id, refused.Refusal.Reason.ToString(),
-                    refused.Refusal.Text, at, transaction);
+                    refused.Refusal.Text, at);
                 break;
             default:
                 throw new ArgumentOutOfRangeException(nameof(entry));
         }
     }
 
-    private void Event(string kind, int site, RoundId id, string? reason, string? text, string at, SqliteTransaction transaction) =>
-        Run(_event, transaction, at, kind, NameOf(site), id.Cycle, id.Round, reason, text);
+    private void Event(string kind, int site, RoundId id, string? reason, string? text, string at) =>
+        Run(_event, at, kind, NameOf(site), id.Cycle, id.Round, reason, text);
 
     private string NameOf(int site) => _setup.Sites[site].Name;
 
@@ -186,9 +191,8 @@ internal sealed class Journal : IDisposable
         return command;
     }
 
-    private static void Run(SqliteCommand command, SqliteTransaction transaction, params ReadOnlySpan<object?> values)
+    private static void Run(SqliteCommand command, params ReadOnlySpan<object?> values)
     {
-        command.Transaction = transaction;
         for (var i = 0; i < values.Length; i++)
             command.Parameters[i].Value = values[i] ?? DBNull.Value;
         command.ExecuteNonQuery();
