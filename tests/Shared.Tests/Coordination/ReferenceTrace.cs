@@ -16,7 +16,10 @@ internal static class ReferenceTrace
 
     private static string Script => Path.Combine(PlanFolders.Repository, "..", "shared", "prototypes", "reference.py");
 
-    public static JsonDocument Injection(string caseName, int rounds)
+    /// <param name="caseName">One of the published cases, one bus a site.</param>
+    /// <param name="rounds">Most rounds.</param>
+    /// <param name="noiseMw">Scale of the reference's own noise on the announced loads, MW.</param>
+    public static JsonDocument Injection(string caseName, int rounds, double noiseMw = 0)
     {
         var folder = PlanFolders.Case(caseName);
         Assert.SkipUnless(File.Exists(Script), "The reference study (../shared/prototypes/reference.py) is not beside this project.");
@@ -27,7 +30,8 @@ internal static class ReferenceTrace
         try
         {
             var (exitCode, error) = Run(
-                Script, folder, "--scheme", "injection", "--rounds", rounds.ToString(CultureInfo.InvariantCulture), "--trace", trace);
+                Script, folder, "--scheme", "injection", "--rounds", rounds.ToString(CultureInfo.InvariantCulture), "--trace", trace,
+                "--noise", noiseMw.ToString(CultureInfo.InvariantCulture));
             Assert.True(exitCode == 0, "The reference study failed: " + error);
             return JsonDocument.Parse(File.ReadAllBytes(trace));
         }

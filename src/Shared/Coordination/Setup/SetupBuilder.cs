@@ -101,7 +101,7 @@ public sealed class SetupBuilder
             Buses = injection ? _network.Buses.Select(bus => new CoordinatorBus(bus.Name)).ToArray() : [],
             Lines = injection ? _network.Lines.Select(Public).ToArray() : [],
         };
-        return setup with { SetupDigest = Digest(setup) };
+        return setup with { SetupDigest = Digest(setup, injection ? [] : TieLines()) };
     }
 
     private CoordinatorComponent[] ComponentsOf(string site) => _weights is { } weights
@@ -113,11 +113,15 @@ public sealed class SetupBuilder
     private static CoordinatorLine Public(Line line) =>
         new(line.Name, line.FromBus, line.ToBus, line.ReactancePu, double.IsFinite(line.LimitMw) ? line.LimitMw : null);
 
+    /// <summary>The lines between sites; under scheme angle the sites at both ends hold them and must hold the same.</summary>
+    private IEnumerable<Line> TieLines() =>
+        _network.Lines.Where(line => _network.Buses[line.FromBus].Site != _network.Buses[line.ToBus].Site);
+
     /// <summary>SHA-256 over the public numbers that both ends must agree on.</summary>
-    private static string Digest(CoordinatorSetup setup)
+    private static string Digest(CoordinatorSetup setup, IEnumerable<Line> tieLines)
     {
         var text = new StringBuilder();
-        text.Append(CultureInfo.InvariantCulture, $"{setup.Plan}|{setup.Scheme}|{setup.PriceScalePerMwh:R}|{setup.RoundCap}|{setup.Cycles}\n");
+        text.Append(CultureInfo.InvariantCulture, $"{setup.Plan}|{setup.Scheme}|{setup.BaseMva:R}|{setup.PriceScalePerMwh:R}|{setup.RoundCap}|{setup.Cycles}\n");
         foreach (var site in setup.Sites)
         {
             text.Append(site.Name).Append('\n');
@@ -125,6 +129,8 @@ public sealed class SetupBuilder
                 text.Append(CultureInfo.InvariantCulture, $"{part.Bus}|{part.Penalty:R}|{part.Bound:R}\n");
         }
 
+        foreach (var line in tieLines)
+            text.Append(CultureInfo.InvariantCulture, $"{line.Name}|{line.ReactancePu:R}|{line.LimitMw:R}\n");
         return Convert.ToHexStringLower(SHA256.HashData(Encoding.UTF8.GetBytes(text.ToString())));
     }
 }
