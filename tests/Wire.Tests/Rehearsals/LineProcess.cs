@@ -72,6 +72,9 @@ internal sealed class LineProcess : IAsyncDisposable
     /// <summary>Waits for the end and returns the exit code.</summary>
     public Task<int> EndAsync(CancellationToken cancel) => Exited.WaitAsync(Patience, cancel);
 
+    /// <summary>Ends the standard input, for programs that read it.</summary>
+    public void CloseInput() => _process.StandardInput.Dispose();
+
     public void Kill() => _process.Kill();
 
     /// <summary>Sends a signal by its number.</summary>

@@ -135,13 +135,21 @@ public sealed class AdmissionTests
             "-CAfile", Path.Combine(lab.SiteBundle("mid"), "authority.pem"),
         ];
 
-        var (_, newest) = await OpenSsl.RunAsync(lab.Bundles, Cancel, Arguments("-tls1_3"));
-        var (code, older) = await OpenSsl.RunAsync(lab.Bundles, Cancel, Arguments("-tls1_2"));
+        var (_, newest) = await RunOpenSslAsync(Arguments("-tls1_3"));
+        var (code, older) = await RunOpenSslAsync(Arguments("-tls1_2"));
 
         Assert.Contains("TLSv1.3", newest, StringComparison.Ordinal);
         Assert.Contains("Verify return code: 0 (ok)", newest, StringComparison.Ordinal);
         Assert.NotEqual(0, code);
         Assert.Contains("alert protocol version", older, StringComparison.Ordinal);
+    }
+
+    /// <summary>Runs it with an empty standard input, at whose end it hangs up.</summary>
+    private static async Task<(int ExitCode, string Output)> RunOpenSslAsync(string[] arguments)
+    {
+        await using var process = LineProcess.Start("openssl", "openssl", arguments);
+        process.CloseInput();
+        return (await process.EndAsync(Cancel), process.Output + process.Errors);
     }
 
     private static async Task<SslProtocols> HandshakeAsync(int port, SslProtocols version, X509Certificate2 certificate)

@@ -73,12 +73,18 @@ internal sealed class SiteClient : IDisposable
         throw new InvalidOperationException($"The stream ended before a {kind} came.");
     }
 
-    /// <summary>Reads to the end of the stream; the refusal that came before it, if one did.</summary>
+    /// <summary>Reads to the end of the stream and hangs up at a refusal; the refusal that came, if one did.</summary>
     public async Task<V1.Refusal?> EndAsync()
     {
         V1.Refusal? refusal = null;
         while (await ReadAsync() is { } message)
-            refusal = message.Refusal ?? refusal;
+        {
+            if (message.Refusal is null)
+                continue;
+            refusal = message.Refusal;
+            await CompleteAsync();
+        }
+
         return refusal;
     }
 
