@@ -54,7 +54,8 @@ internal static class AgentProgram
     {
         return new LoggerConfiguration()
             .MinimumLevel.Information()
-            .WriteTo.File(new CompactJsonFormatter(), Path.Combine(state, "agent.jsonl"), fileSizeLimitBytes: 16L << 20, rollOnFileSizeLimit: true, retainedFileCountLimit: 4)
+            .WriteTo.File(new CompactJsonFormatter(), Path.Combine(state, "agent.jsonl"),
+                fileSizeLimitBytes: 16L << 20, rollOnFileSizeLimit: true, retainedFileCountLimit: 4)
             .WriteTo.Console(restrictedToMinimumLevel: Serilog.Events.LogEventLevel.Warning, standardErrorFromLevel: Serilog.Events.LogEventLevel.Verbose,
                 formatProvider: System.Globalization.CultureInfo.InvariantCulture)
             .CreateLogger();

@@ -20,7 +20,11 @@ internal sealed class CoordinatorOptions
     /// <summary>Reads the command line and hands the options on; prints what is wrong and returns 2 otherwise.</summary>
     public static Task<int> RunAsync(string[] args, Func<CoordinatorOptions, Task<int>> run)
     {
-        var bundle = new Option<DirectoryInfo>("--bundle") { Description = "Folder that 'halfvoice pack' made for the coordinator (read only).", Required = true };
+        var bundle = new Option<DirectoryInfo>("--bundle")
+        {
+            Description = "Folder that 'halfvoice pack' made for the coordinator (read only).",
+            Required = true,
+        };
         var state = new Option<DirectoryInfo>("--state") { Description = "Folder for journal and log; keep it across restarts.", Required = true };
         var listen = new Option<IPEndPoint>("--listen")
         {
@@ -28,7 +32,8 @@ internal sealed class CoordinatorOptions
             CustomParser = ParseEndPoint,
             DefaultValueFactory = _ => new IPEndPoint(IPAddress.Loopback, 0),
         };
-        var root = new RootCommand("Halfvoice coordinator: asks the sites of a plan, round by round, until the dispatch settles. Shadow mode: nothing here writes a set-point to equipment.")
+        var root = new RootCommand("Halfvoice coordinator: asks the sites of a plan, round by round, until the dispatch settles. "
+            + "Shadow mode: nothing here writes a set-point to equipment.")
         {
             bundle, state, listen,
         };

@@ -135,7 +135,8 @@ internal sealed class Journal : IDisposable
         command.Parameters.AddWithValue("$key", key);
         command.Parameters.AddWithValue("$value", value);
         if (command.ExecuteScalar() as string != value)
-            throw new InvalidDataException($"The journal was written for {whose}. Give the coordinator an empty state folder, or the bundle that it was started with.");
+            throw new InvalidDataException(
+                $"The journal was written for {whose}. Give the coordinator an empty state folder, or the bundle that it was started with.");
     }
 
     private void Store(JournalEntry entry, string at, Func<(long Down, long Up)> bytes)

@@ -55,7 +55,8 @@ internal static class CoordinatorProgram
     {
         return new LoggerConfiguration()
             .MinimumLevel.Information()
-            .WriteTo.File(new CompactJsonFormatter(), Path.Combine(state, "coordinator.jsonl"), fileSizeLimitBytes: 64L << 20, rollOnFileSizeLimit: true, retainedFileCountLimit: 4)
+            .WriteTo.File(new CompactJsonFormatter(), Path.Combine(state, "coordinator.jsonl"),
+                fileSizeLimitBytes: 64L << 20, rollOnFileSizeLimit: true, retainedFileCountLimit: 4)
             .WriteTo.Console(restrictedToMinimumLevel: Serilog.Events.LogEventLevel.Warning, standardErrorFromLevel: Serilog.Events.LogEventLevel.Verbose,
                 formatProvider: System.Globalization.CultureInfo.InvariantCulture)
             .CreateLogger();

@@ -42,29 +42,43 @@ internal static class CheckCommand
             table.AddRow(Markup.Escape(what), Markup.Escape(value));
         screen.Show(table);
         foreach (var (sites, derivation) in preview.Privacy)
-            screen.Text.WriteLine($"privacy of {string.Join(", ", sites.Take(8))}{(sites.Count > 8 ? $" and {sites.Count - 8} more" : string.Empty)}: {derivation.Words}");
+        {
+            var more = sites.Count > 8 ? $" and {sites.Count - 8} more" : string.Empty;
+            screen.Text.WriteLine($"privacy of {string.Join(", ", sites.Take(8))}{more}: {derivation.Words}");
+        }
+
         screen.Text.WriteLine();
         foreach (var warning in warnings)
             screen.Text.WriteLine($"warning: {warning}");
-        screen.Text.WriteLine(warnings.Count == 0 ? "The plan is sound; nothing to warn of." : $"The plan can be rehearsed; {warnings.Count} warning{(warnings.Count == 1 ? string.Empty : "s")}.");
+        var count = $"{warnings.Count} warning{(warnings.Count == 1 ? string.Empty : "s")}";
+        screen.Text.WriteLine(warnings.Count == 0 ? "The plan is sound; nothing to warn of." : $"The plan can be rehearsed; {count}.");
     }
 
     private static IEnumerable<(string What, string Value)> Rows(Plan plan, PlanPreview preview)
     {
         var network = plan.Network;
         var loads = preview.Optima.Select((_, c) => plan.LoadMw(c + 1).Sum()).ToArray();
-        yield return ("sites, buses, lines, generators", Text($"{network.Sites.Count}, {network.Buses.Count}, {network.Lines.Count}, {network.Generators.Count}"));
+        var (score, measure, link) = (preview.TrialScore, preview.TrialMeasure, preview.SlowestLink);
+        yield return ("sites, buses, lines, generators",
+            Text($"{network.Sites.Count}, {network.Buses.Count}, {network.Lines.Count}, {network.Generators.Count}"));
         yield return ("load", Text($"{loads.Min():0.0} to {loads.Max():0.0} MW over the cycles; capacity {network.Generators.Sum(g => g.MaxMw):0.0} MW"));
-        yield return ("scheme", Text($"{PlanKeys.NameOf(plan.Scheme.Kind)}; price scale {preview.PriceScalePerMwh:0.##} $/MWh, penalty {(plan.Scheme.PenaltyFactor == 1 ? "automatic" : Text($"{plan.Scheme.PenaltyFactor:0.###} times the automatic one"))}"));
-        yield return ("settled when", Text($"mismatch at most {preview.MismatchLimitMw:0.00} MW ({100 * plan.Stop.MismatchFraction:0.##} % of {preview.ReferenceLoadMw:0} MW) and price move at most {plan.Stop.PriceMovePerMwh:0.###} $/MWh, or what noise leaves"));
+        var penalty = plan.Scheme.PenaltyFactor == 1 ? "automatic" : Text($"{plan.Scheme.PenaltyFactor:0.###} times the automatic one");
+        yield return ("scheme", Text($"{PlanKeys.NameOf(plan.Scheme.Kind)}; price scale {preview.PriceScalePerMwh:0.##} $/MWh, penalty {penalty}"));
+        var fraction = Text($"({100 * plan.Stop.MismatchFraction:0.##} % of {preview.ReferenceLoadMw:0} MW)");
+        var price = Text($"price move at most {plan.Stop.PriceMovePerMwh:0.###} $/MWh, or what noise leaves");
+        yield return ("settled when", Text($"mismatch at most {preview.MismatchLimitMw:0.00} MW {fraction} and {price}"));
         yield return ("rounds expected", Text($"{preview.TrialRounds} (trial of cycle 1 in this process, {preview.TrialEnd}); cap {plan.Stop.RoundCap}"));
-        yield return ("trial's score", Text($"cost gap {100 * preview.TrialScore.CostGap:0.000} %, reserve {preview.TrialScore.ReserveMw:0.00} MW, worst loading {100 * preview.TrialScore.WorstLoading:0.0} %"));
-        yield return ("noise floor", Text($"mismatch {preview.TrialMeasure.MismatchFloorMw:0.00} MW, price move {preview.TrialMeasure.PriceFloorPerMwh:0.000} $/MWh at the round cap"));
+        var loading = Text($"worst loading {100 * score.WorstLoading:0.0} %");
+        yield return ("trial's score", Text($"cost gap {100 * score.CostGap:0.000} %, reserve {score.ReserveMw:0.00} MW, {loading}"));
+        var priceFloor = Text($"price move {measure.PriceFloorPerMwh:0.000} $/MWh at the round cap");
+        yield return ("noise floor", Text($"mismatch {measure.MismatchFloorMw:0.00} MW, {priceFloor}"));
         yield return ("bytes a round", Text($"{preview.BytesPerRound:0} for all sites, both directions"));
-        yield return ("slowest link", Text($"{preview.SlowestSite}: round trip {preview.SlowestLink.RoundTrip.TotalMilliseconds:0} ms, jitter {preview.SlowestLink.Jitter.TotalMilliseconds:0} ms; {preview.TrialRounds} rounds take {preview.LinkSeconds:0.0} s or more"));
+        var trip = Text($"round trip {link.RoundTrip.TotalMilliseconds:0} ms, jitter {link.Jitter.TotalMilliseconds:0} ms");
+        yield return ("slowest link", Text($"{preview.SlowestSite}: {trip}; {preview.TrialRounds} rounds take {preview.LinkSeconds:0.0} s or more"));
         yield return ("limit to settle", Text($"{AcceptanceJudge.SettleWithinSeconds(plan):0.#} s of an interval of {plan.Interval.TotalSeconds:0} s"));
         yield return ("privacy", RunNotes.PrivacyNote(plan));
-        yield return ("central optimum", Text($"{preview.Optima[0].CostPerHour:0.00} $/h in cycle 1; prices {preview.Optima[0].PricePerMwh.Min():0.00} to {preview.Optima[0].PricePerMwh.Max():0.00} $/MWh"));
+        var (cost, prices) = (preview.Optima[0].CostPerHour, preview.Optima[0].PricePerMwh);
+        yield return ("central optimum", Text($"{cost:0.00} $/h in cycle 1; prices {prices.Min():0.00} to {prices.Max():0.00} $/MWh"));
     }
 
     private static string ToJson(Plan plan, PlanPreview preview, IReadOnlyList<string> warnings)

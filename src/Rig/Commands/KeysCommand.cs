@@ -16,7 +16,11 @@ internal static class KeysCommand
             var screen = new Screen(false);
             var table = Screen.NewTable("plan.yaml").AddColumn("key").AddColumn("unit").AddColumn("range").AddColumn("default").AddColumn("meaning");
             foreach (var key in PlanKeys.All)
-                table.AddRow(Markup.Escape(key.Path), Markup.Escape(key.Unit), Markup.Escape(key.Range), Markup.Escape(key.Default), Markup.Escape(key.Meaning));
+            {
+                string[] cells = [key.Path, key.Unit, key.Range, key.Default, key.Meaning];
+                table.AddRow(Array.ConvertAll(cells, Markup.Escape));
+            }
+
             screen.Show(table);
             return ExitCodes.Passed;
         });

@@ -14,9 +14,19 @@ internal static class NewCommand
         var seed = new Option<long>("--seed") { Description = "The same seed invents the same region.", DefaultValueFactory = _ => 1 };
         var buses = new Option<int>("--buses-per-site") { Description = "About this many buses a site, 1 to 20.", DefaultValueFactory = _ => 1 };
         var cdf = new Option<FileInfo?>("--from-cdf") { Description = "Import a solved case in the IEEE Common Data Format instead of inventing." };
-        var costs = new Option<FileInfo?>("--costs") { Description = "With --from-cdf: the plants, as a generators.csv with bus numbers as buses; without it placeholders are used." };
-        var sitesBy = new Option<ImportSites>("--sites-by") { Description = "With --from-cdf: one site a bus, or one an area of the file.", DefaultValueFactory = _ => ImportSites.Bus };
-        var command = new Command("new", "Make a plan folder: an invented region of any size, or an imported case.") { folder, sites, seed, buses, cdf, costs, sitesBy };
+        var costs = new Option<FileInfo?>("--costs")
+        {
+            Description = "With --from-cdf: the plants, as a generators.csv with bus numbers as buses; without it placeholders are used.",
+        };
+        var sitesBy = new Option<ImportSites>("--sites-by")
+        {
+            Description = "With --from-cdf: one site a bus, or one an area of the file.",
+            DefaultValueFactory = _ => ImportSites.Bus,
+        };
+        var command = new Command("new", "Make a plan folder: an invented region of any size, or an imported case.")
+        {
+            folder, sites, seed, buses, cdf, costs, sitesBy,
+        };
         command.SetAction(parse =>
         {
             var target = parse.GetRequiredValue(folder);
@@ -26,10 +36,13 @@ internal static class NewCommand
                 ? Import(file, parse.GetValue(costs), parse.GetValue(sitesBy), parse.GetValue(sites), screen)
                 : Invent(parse.GetValue(sites), parse.GetValue(seed), parse.GetValue(buses), parse.GetValue(costs));
             var comment = parse.GetValue(cdf) is null
-                ? $"An invented region: no bus, line, plant, load or cost here belongs to a real one. Made with --sites {parse.GetValue(sites)} --seed {parse.GetValue(seed)} --buses-per-site {parse.GetValue(buses)}."
+                ? $"An invented region: no bus, line, plant, load or cost here belongs to a real one. "
+                    + $"Made with --sites {parse.GetValue(sites)} --seed {parse.GetValue(seed)} --buses-per-site {parse.GetValue(buses)}."
                 : $"Imported from {parse.GetValue(cdf)!.Name} (IEEE Common Data Format).";
             Write(plan, target, comment);
-            screen.Text.WriteLine($"{plan.Name}: {plan.Network.Sites.Count} sites, {plan.Network.Buses.Count} buses, {plan.Network.Lines.Count} lines, {plan.Network.Generators.Count} generators in {target}");
+            var network = plan.Network;
+            screen.Text.WriteLine($"{plan.Name}: {network.Sites.Count} sites, {network.Buses.Count} buses, {network.Lines.Count} lines, "
+                + $"{network.Generators.Count} generators in {target}");
             return ExitCodes.Passed;
         });
         return command;

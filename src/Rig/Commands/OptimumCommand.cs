@@ -37,9 +37,11 @@ internal static class OptimumCommand
         if (screen.Json)
             Console.Out.WriteLine(ToJson(plan.Network, optimum, seconds));
         if (optimum.Status == OptimumStatus.Infeasible)
-            throw new RigException(ExitCodes.PlanWrong, $"The loads of cycle {cycle} cannot be served by this grid. {optimum.Infeasibility?.Describe(plan.Network)}");
+            throw new RigException(ExitCodes.PlanWrong,
+                $"The loads of cycle {cycle} cannot be served by this grid. {optimum.Infeasibility?.Describe(plan.Network)}");
         if (optimum.Status != OptimumStatus.Optimal)
-            throw new RigException(ExitCodes.Broke, $"No optimum was found after {optimum.Iterations} iterations; the numbers of the plan are too far apart in size.");
+            throw new RigException(ExitCodes.Broke,
+                $"No optimum was found after {optimum.Iterations} iterations; the numbers of the plan are too far apart in size.");
         if (!screen.Json)
             Show(screen, plan.Network, load, optimum, seconds);
         return ExitCodes.Passed;
@@ -85,7 +87,12 @@ internal static class OptimumCommand
         {
             var solved = optimum.Status == OptimumStatus.Optimal;
             json.WriteStartObject();
-            json.WriteString("status", optimum.Status switch { OptimumStatus.Optimal => "optimal", OptimumStatus.Infeasible => "infeasible", _ => "not_converged" });
+            json.WriteString("status", optimum.Status switch
+            {
+                OptimumStatus.Optimal => "optimal",
+                OptimumStatus.Infeasible => "infeasible",
+                _ => "not_converged",
+            });
             if (solved)
                 json.WriteNumber("cost_per_hour", optimum.CostPerHour);
             else

@@ -31,13 +31,16 @@ internal static class PackCommand
         if (days is < 1 or > 3650)
             throw new RigException(ExitCodes.PlanWrong, $"--days must be 1 to 3650; it is {days}.");
         if (File.Exists(folder) || (Directory.Exists(folder) && Directory.EnumerateFileSystemEntries(folder).Any()))
-            throw new RigException(ExitCodes.PlanWrong, $"{folder} is not empty. Bundles hold keys, so they are never mixed with other files or older bundles: give a new folder.");
+            throw new RigException(ExitCodes.PlanWrong,
+                $"{folder} is not empty. Bundles hold keys, so they are never mixed with other files or older bundles: give a new folder.");
         var (plan, _) = PlanLoader.Load(planFolder);
         var host = coordinator[..colon].Trim('[', ']');
         var address = IPAddress.TryParse(host, out var parsed) ? parsed : null;
         using var authority = LabAuthority.Create(TimeSpan.FromDays(days), TimeProvider.System);
-        new BundleWriter(plan, new SetupBuilder(plan), authority, authority.Certificate.NotAfter.ToUniversalTime()).WriteAll(folder, address is null ? [host] : [], address is null ? [] : [address]);
-        screen.Text.WriteLine($"Bundles of {plan.Network.Sites.Count} sites and the coordinator are in {folder}. Each site's folder holds its private key and its loads: hand it to that site alone.");
+        new BundleWriter(plan, new SetupBuilder(plan), authority, authority.Certificate.NotAfter.ToUniversalTime()).WriteAll(
+            folder, address is null ? [host] : [], address is null ? [] : [address]);
+        screen.Text.WriteLine($"Bundles of {plan.Network.Sites.Count} sites and the coordinator are in {folder}. "
+            + "Each site's folder holds its private key and its loads: hand it to that site alone.");
         screen.Text.WriteLine($"Start the coordinator:  halfvoice-coordinator --bundle {folder}/coordinator --state DIR --listen 0.0.0.0:{port}");
         screen.Text.WriteLine($"Start each site:        halfvoice-agent --bundle {folder}/sites/SITE --state DIR --coordinator {coordinator}");
         return ExitCodes.Passed;

@@ -47,7 +47,8 @@ public static class RigCommandLine
             await Console.Error.WriteLineAsync("Stopped as asked; every process of the run has been ended.").ConfigureAwait(false);
             return ExitCodes.Broke;
         }
-        catch (Exception failure) when (failure is IOException or UnauthorizedAccessException or Microsoft.Data.Sqlite.SqliteException or Processes.ChildFailedException)
+        catch (Exception failure) when (failure is IOException or UnauthorizedAccessException
+            or Microsoft.Data.Sqlite.SqliteException or Processes.ChildFailedException)
         {
             await Console.Error.WriteLineAsync($"The command broke: {failure.Message}").ConfigureAwait(false);
             return ExitCodes.Broke;

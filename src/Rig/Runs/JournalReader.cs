@@ -30,12 +30,16 @@ public sealed class JournalReader : IDisposable
 
     public JournalReader(string path)
     {
-        _connection = new SqliteConnection(new SqliteConnectionStringBuilder { DataSource = path, Pooling = false, Mode = SqliteOpenMode.ReadWrite }.ToString());
+        var file = new SqliteConnectionStringBuilder { DataSource = path, Pooling = false, Mode = SqliteOpenMode.ReadWrite };
+        _connection = new SqliteConnection(file.ToString());
         _connection.Open();
     }
 
     public IReadOnlyList<JournalCycle> Cycles() => Read(
-        "SELECT cycle, ended, rounds, seconds, mismatch_mw, price_move_per_mwh, mismatch_floor_mw, price_floor_per_mwh, unserved_mw, bytes_down, bytes_up FROM cycles ORDER BY cycle",
+        """
+        SELECT cycle, ended, rounds, seconds, mismatch_mw, price_move_per_mwh, mismatch_floor_mw, price_floor_per_mwh, unserved_mw, bytes_down, bytes_up
+        FROM cycles ORDER BY cycle
+        """,
         r => new JournalCycle(r.GetInt32(0), r.GetString(1), r.GetInt32(2), r.GetDouble(3), r.GetDouble(4), r.GetDouble(5), r.GetDouble(6),
             r.GetDouble(7), r.GetDouble(8), r.GetInt64(9), r.GetInt64(10)));
 

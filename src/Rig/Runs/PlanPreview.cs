@@ -1,3 +1,4 @@
+using System.Globalization;
 using Google.Protobuf;
 using Halfvoice.Coordination;
 using Halfvoice.Optimization;
@@ -50,7 +51,8 @@ public sealed record PlanPreview
     public static PlanPreview Of(Plan plan)
     {
         var setups = new SetupBuilder(plan);
-        var optima = Enumerable.Range(1, plan.Cycles).Take(MostOptima).Select(c => CentralYardstick.Solve(plan.Network, plan.LoadMw(c), $"cycle {c}")).ToArray();
+        var optima = Enumerable.Range(1, plan.Cycles).Take(MostOptima)
+            .Select(c => CentralYardstick.Solve(plan.Network, plan.LoadMw(c), $"cycle {c}")).ToArray();
         var (slowest, link) = plan.Network.Sites.Select(site => (site, plan.Links.For(site))).MaxBy(pair => pair.Item2.RoundTrip + pair.Item2.Jitter);
         var privacy = Derivations(plan, setups);
         var trial = plan with { Cycles = 1 };
@@ -95,17 +97,31 @@ public sealed record PlanPreview
             yield return $"the trial of cycle 1 did not settle within {plan.Stop.RoundCap} rounds ({TrialEnd})";
         var within = AcceptanceJudge.SettleWithinSeconds(plan);
         if (LinkSeconds > within)
-            yield return FormattableString.Invariant($"{TrialRounds} rounds over the link of {SlowestSite} take {LinkSeconds:0} s or more; the limit is {within:0} s");
+            yield return FormattableString.Invariant(
+                $"{TrialRounds} rounds over the link of {SlowestSite} take {LinkSeconds:0} s or more; the limit is {within:0} s");
         if (SlowestLink.RoundTrip > plan.Rounds.Deadline)
-            yield return FormattableString.Invariant($"the round trip of {SlowestSite} ({SlowestLink.RoundTrip.TotalMilliseconds:0} ms) is longer than the round deadline ({plan.Rounds.Deadline.TotalMilliseconds:0} ms)");
+        {
+            yield return string.Create(
+                CultureInfo.InvariantCulture,
+                $"the round trip of {SlowestSite} ({SlowestLink.RoundTrip.TotalMilliseconds:0} ms) is longer than "
+                + $"the round deadline ({plan.Rounds.Deadline.TotalMilliseconds:0} ms)");
+        }
+
         if (plan.Privacy.Mechanism == MechanismKind.None)
             yield return "mechanism none: answers are NOT veiled; a listener recovers every load from them";
         foreach (var (sites, derivation) in Privacy)
         {
             if (derivation.Allowance.EpsilonPerCycle > 10)
-                yield return $"ε {derivation.Allowance.EpsilonPerCycle:0.###} a cycle at {Names(sites)} promises next to nothing: common practice is at most 10, better 1";
+            {
+                yield return $"ε {derivation.Allowance.EpsilonPerCycle:0.###} a cycle at {Names(sites)} promises next to nothing: "
+                    + "common practice is at most 10, better 1";
+            }
+
             if (derivation.DayTotal > 10 && derivation.Allowance.EpsilonPerCycle <= 10)
-                yield return $"a day of such cycles adds up to ε {derivation.DayTotal:0.###} at {Names(sites)}: the promise holds per {plan.Privacy.Scope.ToString().ToLowerInvariant()}, hardly per day";
+            {
+                yield return $"a day of such cycles adds up to ε {derivation.DayTotal:0.###} at {Names(sites)}: "
+                    + $"the promise holds per {plan.Privacy.Scope.ToString().ToLowerInvariant()}, hardly per day";
+            }
         }
     }
 

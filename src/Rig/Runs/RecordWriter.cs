@@ -61,7 +61,8 @@ public static class RecordWriter
     {
         var close = round.Close;
         database.Insert("rounds", round.Cycle, round.Round, round.AskedAtUtc, close?.AtUtc, round.AskedSites.Length, close?.Answers.Count,
-            close?.Held.Length, close?.MismatchMw, close?.PriceMovePerMwh, close?.MismatchFloorMw, close?.PriceFloorPerMwh, close?.WindowRounds, close?.Seconds);
+            close?.Held.Length, close?.MismatchMw, close?.PriceMovePerMwh, close?.MismatchFloorMw, close?.PriceFloorPerMwh,
+            close?.WindowRounds, close?.Seconds);
         foreach (var s in round.AskedSites)
         {
             foreach (var k in map.AdjustableOf[s])

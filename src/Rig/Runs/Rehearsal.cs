@@ -145,7 +145,11 @@ public sealed class Rehearsal
         }
 
         if (died.IsCanceled)
-            throw new RigException(ExitCodes.Broke, $"The rehearsal did not end within {LongestRun().TotalMinutes:0} minutes, the longest that its rounds and deadlines allow. See {_folder.Logs}.");
+        {
+            throw new RigException(ExitCodes.Broke, $"The rehearsal did not end within {LongestRun().TotalMinutes:0} minutes, "
+                + $"the longest that its rounds and deadlines allow. See {_folder.Logs}.");
+        }
+
         throw new RigException(ExitCodes.Broke, $"{await died.ConfigureAwait(false)}{Environment.NewLine}See {_folder.Logs}.");
     }
 
@@ -161,7 +165,8 @@ public sealed class Rehearsal
     }
 
     private TimeSpan LongestRun() =>
-        TimeSpan.FromSeconds(CoordinatorCore.GatherSeconds + 120) + (_plan.Cycles * (double)_plan.Stop.RoundCap * (_plan.Rounds.Deadline + TimeSpan.FromMilliseconds(50)));
+        TimeSpan.FromSeconds(CoordinatorCore.GatherSeconds + 120)
+        + (_plan.Cycles * (double)_plan.Stop.RoundCap * (_plan.Rounds.Deadline + TimeSpan.FromMilliseconds(50)));
 
     /// <summary>Puts the processes' own logs beside the rig's, one file each.</summary>
     private void CollectLogs()

@@ -31,9 +31,17 @@ public static class RunNotes
         foreach (var cycle in cycles)
         {
             if (cycle.End != "Settled")
-                notes.Add(string.Create(CultureInfo.InvariantCulture, $"Cycle {cycle.Cycle} did not settle ({cycle.End}): in the field the last accepted dispatch stands; the scores are of the dispatch that it had reached."));
+            {
+                notes.Add($"Cycle {cycle.Cycle} did not settle ({cycle.End}): in the field the last accepted dispatch stands; "
+                    + "the scores are of the dispatch that it had reached.");
+            }
+
             if (cycle.UnservedMw > 1e-6)
-                notes.Add(string.Create(CultureInfo.InvariantCulture, $"Cycle {cycle.Cycle}: the released values could not all be honoured by the network; {cycle.UnservedMw:0.###} MW were left unserved in the last consensus."));
+            {
+                notes.Add(string.Create(CultureInfo.InvariantCulture,
+                    $"Cycle {cycle.Cycle}: the released values could not all be honoured by the network; "
+                    + $"{cycle.UnservedMw:0.###} MW were left unserved in the last consensus."));
+            }
         }
 
         if (cycles.Count < plan.Cycles)
@@ -64,6 +72,8 @@ public static class RunNotes
             return "Mechanism none: answers are NOT veiled; a listener recovers every load from them.";
         var stated = plan.Privacy.Stated ? "as the plan states" : "the default, since the plan has no privacy section";
         return string.Create(CultureInfo.InvariantCulture,
-            $"Mechanism per-round ({stated}): discrete Laplace noise on every answer, load changes of {plan.Privacy.AdjacencyMw} MW hidden, ε {plan.Privacy.Epsilon} per {plan.Privacy.Scope.ToString().ToLowerInvariant()}, δ = 0, basic composition.");
+            $"Mechanism per-round ({stated}): discrete Laplace noise on every answer, "
+            + $"load changes of {plan.Privacy.AdjacencyMw} MW hidden, ε {plan.Privacy.Epsilon} per {plan.Privacy.Scope.ToString().ToLowerInvariant()}, "
+            + $"δ = 0, basic composition.");
     }
 }

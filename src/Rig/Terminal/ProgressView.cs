@@ -78,14 +78,18 @@ public sealed class ProgressView
     {
         var left = _withinSeconds - _time.GetElapsedTime(_cycleBegan).TotalSeconds;
         return string.Create(CultureInfo.InvariantCulture,
-            $"cycle {news.Cycle}/{_cycles}  round {news.Round}  mismatch {news.MismatchMw:0.00} MW (limit {news.MismatchLimitMw:0.00})  price move {news.PriceMovePerMwh:0.000} $/MWh (limit {news.PriceMoveLimitPerMwh:0.000})  answers {news.Answered}/{news.Asked}  time left {Math.Max(0, left):0} s");
+            $"cycle {news.Cycle}/{_cycles}  round {news.Round}  mismatch {news.MismatchMw:0.00} MW (limit {news.MismatchLimitMw:0.00})"
+            + $"  price move {news.PriceMovePerMwh:0.000} $/MWh (limit {news.PriceMoveLimitPerMwh:0.000})"
+            + $"  answers {news.Answered}/{news.Asked}  time left {Math.Max(0, left):0} s");
     }
 
     private string CycleText(CoordinatorProgress news)
     {
         var end = news.Settled ? "settled" : $"NOT settled ({news.End})";
         return string.Create(CultureInfo.InvariantCulture,
-            $"cycle {news.Cycle}/{_cycles}  {end} after {news.Rounds} rounds in {news.Seconds:0.00} s  mismatch {news.MismatchMw:0.00} MW (limit {news.MismatchLimitMw:0.00})  price move {news.PriceMovePerMwh:0.000} $/MWh (limit {news.PriceMoveLimitPerMwh:0.000})");
+            $"cycle {news.Cycle}/{_cycles}  {end} after {news.Rounds} rounds in {news.Seconds:0.00} s"
+            + $"  mismatch {news.MismatchMw:0.00} MW (limit {news.MismatchLimitMw:0.00})"
+            + $"  price move {news.PriceMovePerMwh:0.000} $/MWh (limit {news.PriceMoveLimitPerMwh:0.000})");
     }
 
     private void Status(string text, bool always)

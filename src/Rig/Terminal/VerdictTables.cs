@@ -16,13 +16,16 @@ public static class VerdictTables
         screen.Text.WriteLine();
         screen.Text.WriteLine(verdict.Passed ? "PASSED: every limit was met." : "FAILED: at least one limit was missed.");
         screen.Text.WriteLine($"run folder: {folder}");
-        screen.Text.WriteLine($"commit {verdict.Commit}, seed {verdict.Seed?.ToString(CultureInfo.InvariantCulture) ?? "none (real noise, no faults)"}, options {string.Join(", ", verdict.Options.Select(o => $"{o.Key}={o.Value}"))}");
+        var seed = verdict.Seed?.ToString(CultureInfo.InvariantCulture) ?? "none (real noise, no faults)";
+        var options = string.Join(", ", verdict.Options.Select(o => $"{o.Key}={o.Value}"));
+        screen.Text.WriteLine($"commit {verdict.Commit}, seed {seed}, options {options}");
     }
 
     private static Table Cycles(Verdict verdict)
     {
         var table = Screen.NewTable($"{verdict.Plan}: cycles");
-        foreach (var (name, right) in new[] { ("cycle", true), ("end", false), ("rounds", true), ("seconds", true), ("optimum $/h", true), ("delivered $/h", true),
+        foreach (var (name, right) in new[] { ("cycle", true), ("end", false), ("rounds", true), ("seconds", true),
+            ("optimum $/h", true), ("delivered $/h", true),
             ("cost gap %", true), ("reserve MW", true), ("worst line", false), ("loading %", true), ("kB", true), ("largest ε", true) })
         {
             table.AddColumn(right ? new TableColumn(name).RightAligned() : new TableColumn(name));

@@ -135,7 +135,10 @@ public class BadGridTests
             .Replacing("loads/north.csv", "A,10.5", "A,much")
             .Errors();
         Assert.Equal(
-            ["grid/buses.csv:2:4", "grid/generators.csv:3:4", "grid/lines.csv:2:4", "grid/lines.csv:2:5", "grid/lines.csv:4:3", "loads/north.csv:2:2", "plan.yaml:2:11"],
+            [
+                "grid/buses.csv:2:4", "grid/generators.csv:3:4", "grid/lines.csv:2:4", "grid/lines.csv:2:5", "grid/lines.csv:4:3",
+                "loads/north.csv:2:2", "plan.yaml:2:11",
+            ],
             errors.Select(text => string.Join(':', text.Split(':').Take(3))));
     }
 }

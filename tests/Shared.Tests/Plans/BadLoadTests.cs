@@ -8,7 +8,8 @@ public class BadLoadTests
     [InlineData("bus,load_mw\nB,NaN\n", "loads/south.csv:2:2: load_mw (value not shown: loads are private): must be a number, not NaN")]
     [InlineData("bus,load_mw\nB,-Infinity\n", "loads/south.csv:2:2: load_mw (value not shown: loads are private): must be finite")]
     [InlineData("bus,load_mw\nB,\n", "loads/south.csv:2:2: load_mw (value not shown: loads are private): must not be blank")]
-    [InlineData("bus,load_mw\nB,7.77e7\n", "loads/south.csv:2:2: load_mw (value not shown: loads are private): must be at least -1,000,000, at most 1,000,000 MW")]
+    [InlineData("bus,load_mw\nB,7.77e7\n",
+        "loads/south.csv:2:2: load_mw (value not shown: loads are private): must be at least -1,000,000, at most 1,000,000 MW")]
     [InlineData("bus,load_mw\nA,7.77\n", "loads/south.csv:2:1: bus (value not shown: loads are private): must be a bus of this site")]
     [InlineData("bus,load_mw\n7.77,B\n", "loads/south.csv:2:1: bus (value not shown: loads are private): must be a bus of grid/buses.csv")]
     [InlineData("bus,load_mw\n,7.77\n", "loads/south.csv:2:1: bus (value not shown: loads are private): must not be blank")]
@@ -19,9 +20,12 @@ public class BadLoadTests
     [InlineData("bus,mw\nB,7.77\n", "loads/south.csv:1: has no column 'load_mw'")]
     [InlineData("time,bus,load_mw\n8:00,B,7.77\n", "loads/south.csv:2:1: time (value not shown: loads are private): must be a time such as 08:05")]
     [InlineData("time,bus,load_mw\n,B,7.77\n", "loads/south.csv:2:1: time (value not shown: loads are private): must be a time such as 08:05")]
-    [InlineData("time,bus,load_mw\n08:05,B,7.77\n08:00,B,7.77\n", "loads/south.csv:3:1: time (value not shown: loads are private): must be later than the time that starts in line 2")]
-    [InlineData("time,bus,load_mw\n08:05,B,7.77\n2031-01-01T08:10,B,7.77\n", "loads/south.csv:3:1: time (value not shown: loads are private): must be written in the same way")]
-    [InlineData("time,bus,load_mw\n08:05,B,7.77\n08:05,B,7.77\n", "loads/south.csv:3:2: bus (value not shown: loads are private): is there twice at the same time")]
+    [InlineData("time,bus,load_mw\n08:05,B,7.77\n08:00,B,7.77\n",
+        "loads/south.csv:3:1: time (value not shown: loads are private): must be later than the time that starts in line 2")]
+    [InlineData("time,bus,load_mw\n08:05,B,7.77\n2031-01-01T08:10,B,7.77\n",
+        "loads/south.csv:3:1: time (value not shown: loads are private): must be written in the same way")]
+    [InlineData("time,bus,load_mw\n08:05,B,7.77\n08:05,B,7.77\n",
+        "loads/south.csv:3:2: bus (value not shown: loads are private): is there twice at the same time")]
     [InlineData("time,bus,load_mw\n08:00,B,7.77\n08:00,C,7.77\n08:05,B,7.77\n", "loads/south.csv:4: starts a snapshot without bus 'C'")]
     [InlineData("time,bus,load_mw\n08:00,B,7.77\n08:05,B,7.77\n08:05,C,7.77\n", "loads/south.csv:3: starts a snapshot with bus 'C'")]
     public void A_wrong_load_is_an_error_that_quotes_no_value(string text, string expected)
@@ -68,7 +72,8 @@ public class BadLoadTests
     [Fact]
     public void More_snapshots_than_fit_in_memory_are_an_error()
     {
-        var rows = string.Concat(Enumerable.Range(0, 2000).Select(i => FormattableString.Invariant($"{new DateTime(2031, 1, 1).AddMinutes(i):yyyy-MM-ddTHH:mm},B1,1\n")));
+        var rows = string.Concat(Enumerable.Range(0, 2000).Select(i =>
+            FormattableString.Invariant($"{new DateTime(2031, 1, 1).AddMinutes(i):yyyy-MM-ddTHH:mm},B1,1\n")));
         var buses = string.Concat(Enumerable.Range(1, 3000).Select(i => FormattableString.Invariant($"B{i},wide\n")));
         var errors = new PlanTexts()
             .With("grid/buses.csv", "bus,site\n" + buses)

@@ -15,7 +15,8 @@ public class BadYamlTests
     [InlineData("stop: [5]\n", "plan.yaml:3:7: stop: must have keys of its own")]
     [InlineData("links: { default: lte }\n", "plan.yaml:3:19: links.default: must have keys of its own: profile, latency, jitter, loss, rate")]
     [InlineData("links: { sites: [south] }\n", "plan.yaml:3:17: links.sites: must have the names of sites as keys")]
-    [InlineData("links: { sites: { sauth: { profile: lte } } }\n", "plan.yaml:3:19: links.sites is 'sauth': must be a site of grid/buses.csv: did you mean 'south'?")]
+    [InlineData("links: { sites: { sauth: { profile: lte } } }\n",
+        "plan.yaml:3:19: links.sites is 'sauth': must be a site of grid/buses.csv: did you mean 'south'?")]
     [InlineData("links: { sites: { south: { profile: lte }, south: { profile: lte } } }\n", "plan.yaml:3:44: links.sites is 'south': is there twice")]
     [InlineData("links: { sites: { south: lte } }\n", "plan.yaml:3:26: links.sites.south: must have keys of its own")]
     [InlineData("links: { sites: { south: { latancy: 1s } } }\n", "plan.yaml:3:28: key is 'links.sites.south.latancy': is not known: did you mean 'latency'?")]

@@ -51,7 +51,8 @@ public class CommonDataFormatTests
     public void What_the_format_or_the_model_leaves_out_is_said()
     {
         var warnings = Import(Good).Warnings.Select(warning => warning.Text).ToArray();
-        Assert.Contains("case.cdf: gives no rating for 3 of 5 branches (0 means not given): they are left without a limit: fill in limit_mw where there is one", warnings);
+        Assert.Contains(
+            "case.cdf: gives no rating for 3 of 5 branches (0 means not given): they are left without a limit: fill in limit_mw where there is one", warnings);
         Assert.Contains("case.cdf: rates 2 branches in MVA: taken as limits in MW", warnings);
         Assert.Contains("case.cdf: has 1 transformers: the DC model ignores their tap ratios", warnings);
         Assert.Contains("case.cdf: has 1 phase shifters: their shift is ignored, so real flows will differ", warnings);

@@ -30,7 +30,15 @@ public class PlanWriterTests
             Cycles = 7,
             Scheme = new SchemeSettings { Kind = SchemeKind.Angle, PenaltyFactor = 0.3, Relaxation = 1.05, PriceScalePerMwh = 1.0 / 7 },
             Stop = new StopSettings { MismatchFraction = 1.0 / 3, PriceMovePerMwh = 1e-9, RoundCap = 1, ReferenceLoadMw = 123.456 },
-            Privacy = new PrivacySettings { Mechanism = MechanismKind.None, AdjacencyMw = 0.1, Epsilon = 0.7, Delta = 1e-6, Scope = PrivacyScope.Campaign, Stated = true },
+            Privacy = new PrivacySettings
+            {
+                Mechanism = MechanismKind.None,
+                AdjacencyMw = 0.1,
+                Epsilon = 0.7,
+                Delta = 1e-6,
+                Scope = PrivacyScope.Campaign,
+                Stated = true,
+            },
             Rounds = new RoundSettings { Deadline = TimeSpan.FromMilliseconds(1), Quorum = 0.123456789, HoldRounds = 0 },
             Links = new LinkPlan
             {
@@ -41,7 +49,14 @@ public class PlanWriterTests
                     ["s-1"] = LinkProfiles.ByName["uhf-radio"],
                 },
             },
-            Accept = new AcceptSettings { SettleWithin = TimeSpan.FromHours(24), CostGapFraction = 0, ReserveMw = 0, LineLoadingFraction = 1.1, EpsilonPerDay = 0 },
+            Accept = new AcceptSettings
+            {
+                SettleWithin = TimeSpan.FromHours(24),
+                CostGapFraction = 0,
+                ReserveMw = 0,
+                LineLoadingFraction = 1.1,
+                EpsilonPerDay = 0,
+            },
             Network = network,
             Loads = new Dictionary<string, LoadSeries>
             {

@@ -4,8 +4,9 @@ namespace Halfvoice.Optimization;
 /// Angles from injections: B θ = x with B = Aᵀ diag(b) A, every island's first bus at angle 0. Factored once.
 /// </summary>
 /// <remarks>
-/// A susceptance is added to B at every reference bus, of the sign that B has there so that they cannot cancel. Where the injections of an island sum to zero this changes nothing: summing
-/// the island's rows leaves that susceptance times the reference angle equal to zero. Negative reactances can make B indefinite;
+/// A susceptance is added to B at every reference bus, of the sign that B has there so that they cannot
+/// cancel. Where the injections of an island sum to zero this changes nothing: summing the island's rows leaves that
+/// susceptance times the reference angle equal to zero. Negative reactances can make B indefinite;
 /// every solution is then refined against B itself.
 /// </remarks>
 internal sealed class SusceptanceSystem

@@ -97,7 +97,11 @@ internal static class CdfBranchReader
     {
         var (all, rated) = (draft.Lines.Count, draft.Lines.Count - tally.Unrated);
         if (tally.Unrated > 0)
-            Say($"gives no rating for {tally.Unrated} of {all} branches (0 means not given): they are left without a limit: fill in limit_mw where there is one");
+        {
+            var given = $"{tally.Unrated} of {all}";
+            Say($"gives no rating for {given} branches (0 means not given): they are left without a limit: fill in limit_mw where there is one");
+        }
+
         if (rated > 0)
             Say($"rates {rated} branches in MVA: taken as limits in MW");
         if (tally.Transformers > 0)

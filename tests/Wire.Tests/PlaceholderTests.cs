@@ -1,7 +1,0 @@
-namespace Halfvoice.Tests;
-
-public class PlaceholderTests
-{
-    [Fact]
-    public void Builds() => Assert.True(true);
-}
