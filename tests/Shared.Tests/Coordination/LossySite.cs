@@ -53,7 +53,7 @@ internal sealed class LossySite : ILoadReadings
     /// <param name="sends">False where it dies before the reply leaves.</param>
     public SiteReply? Step(SiteInput input, bool storesFirst, bool sends)
     {
-        var step = Core.Step(input);
+        var step = Core.Step(input, TimeSpan.FromSeconds(1));
         if (!storesFirst)
             return null;
         foreach (var row in step.Charges)

@@ -218,7 +218,7 @@ public sealed class HostileSiteTests
         public V1.Answer AnswerTo(V1.FromCoordinator message)
         {
             var id = new RoundId((int)message.Header.Cycle, (int)message.Header.Round);
-            var step = _core.Step(new SiteInput.Asked(new Ask(id, message.Ask.Everything, [.. message.Ask.Consensus], [.. message.Ask.Dual])));
+            var step = _core.Step(new SiteInput.Asked(new Ask(id, message.Ask.Everything, [.. message.Ask.Consensus], [.. message.Ask.Dual])), TimeSpan.FromSeconds(1));
             var answer = Assert.IsType<SiteReply.Answered>(step.Reply).Answer;
             return new V1.Answer { Everything = answer.Everything, Steps = { answer.Steps } };
         }
