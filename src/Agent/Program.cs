@@ -1,3 +1,4 @@
+using System.Net;
 using System.Net.Security;
 using System.Runtime.InteropServices;
 using System.Security.Authentication;
@@ -82,7 +83,7 @@ internal static class AgentProgram
         Lifeline.Watch(stop.Cancel);
         using var terminate = PosixSignalRegistration.Create(PosixSignal.SIGTERM, AskToStop);
         using var interrupt = PosixSignalRegistration.Create(PosixSignal.SIGINT, AskToStop);
-        using var channel = Dial(options, identity, validator, log);
+        using var channel = Dial(AddressOf(options, setup), identity, validator, log);
         var host = new AgentHost(setup, core, ledger, TimeProvider.System, log);
         return await host.RunAsync(new V1.Dispatch.DispatchClient(channel), stop.Token).ConfigureAwait(false);
 
@@ -99,7 +100,11 @@ internal static class AgentProgram
         return series ?? throw new InvalidDataException(string.Join(Environment.NewLine, errors.Select(error => error.Text)));
     }
 
-    private static GrpcChannel Dial(AgentOptions options, X509Certificate2 identity, PeerValidator validator, Serilog.ILogger log)
+    private static DnsEndPoint AddressOf(AgentOptions options, SiteSetup setup) => options.Coordinator
+        ?? AgentOptions.ReadEndPoint(setup.Coordinator ?? string.Empty)
+        ?? throw new InvalidDataException("Neither the bundle nor --coordinator says where the coordinator is. Give --coordinator HOST:PORT.");
+
+    private static GrpcChannel Dial(DnsEndPoint coordinator, X509Certificate2 identity, PeerValidator validator, Serilog.ILogger log)
     {
         var handler = new SocketsHttpHandler
         {
@@ -115,7 +120,7 @@ internal static class AgentProgram
                 RemoteCertificateValidationCallback = (_, certificate, _, _) => IsCoordinator(certificate as X509Certificate2, validator, log),
             },
         };
-        return GrpcChannel.ForAddress(new UriBuilder("https", options.Coordinator.Host, options.Coordinator.Port).Uri, new GrpcChannelOptions
+        return GrpcChannel.ForAddress(new UriBuilder("https", coordinator.Host, coordinator.Port).Uri, new GrpcChannelOptions
         {
             HttpHandler = handler,
             DisposeHttpClient = true,

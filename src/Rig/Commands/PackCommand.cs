@@ -37,12 +37,12 @@ internal static class PackCommand
         var host = coordinator[..colon].Trim('[', ']');
         var address = IPAddress.TryParse(host, out var parsed) ? parsed : null;
         using var authority = LabAuthority.Create(TimeSpan.FromDays(days), TimeProvider.System);
-        new BundleWriter(plan, new SetupBuilder(plan), authority, authority.Certificate.NotAfter.ToUniversalTime()).WriteAll(
+        new BundleWriter(plan, new SetupBuilder(plan), authority, authority.Certificate.NotAfter.ToUniversalTime(), coordinator).WriteAll(
             folder, address is null ? [host] : [], address is null ? [] : [address]);
         screen.Text.WriteLine($"Bundles of {plan.Network.Sites.Count} sites and the coordinator are in {folder}. "
             + "Each site's folder holds its private key and its loads: hand it to that site alone.");
         screen.Text.WriteLine($"Start the coordinator:  halfvoice-coordinator --bundle {folder}/coordinator --state DIR --listen 0.0.0.0:{port}");
-        screen.Text.WriteLine($"Start each site:        halfvoice-agent --bundle {folder}/sites/SITE --state DIR --coordinator {coordinator}");
+        screen.Text.WriteLine($"Start each site:        halfvoice-agent --bundle {folder}/sites/SITE --state DIR");
         return ExitCodes.Passed;
     }
 }

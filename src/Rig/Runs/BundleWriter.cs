@@ -15,17 +15,20 @@ public sealed class BundleWriter
     private readonly SetupBuilder _setups;
     private readonly LabAuthority _authority;
     private readonly DateTimeOffset? _validUntil;
+    private readonly string? _coordinator;
 
     /// <param name="plan">A validated plan.</param>
     /// <param name="setups">Its setups.</param>
     /// <param name="authority">Issues the identities.</param>
     /// <param name="validUntil">Last moment of the identities; 30 days from now when null.</param>
-    public BundleWriter(Plan plan, SetupBuilder setups, LabAuthority authority, DateTimeOffset? validUntil = null)
+    /// <param name="coordinator">HOST:PORT that sites dial; null where each agent's command line says it.</param>
+    public BundleWriter(Plan plan, SetupBuilder setups, LabAuthority authority, DateTimeOffset? validUntil = null, string? coordinator = null)
     {
         _plan = plan;
         _setups = setups;
         _authority = authority;
         _validUntil = validUntil;
+        _coordinator = coordinator;
     }
 
     /// <summary>Writes all bundles: FOLDER/coordinator and FOLDER/sites/SITE.</summary>
@@ -44,7 +47,7 @@ public sealed class BundleWriter
         {
             var own = SiteFolder(folder, site);
             Write(own, new IdentityRequest(IdentityRole.Site, site));
-            PrivateFiles.Write(Path.Combine(own, "site.json"), SetupJson.Write(_setups.ForSite(site)));
+            PrivateFiles.Write(Path.Combine(own, "site.json"), SetupJson.Write(_setups.ForSite(site) with { Coordinator = _coordinator }));
             PrivateFiles.Write(Path.Combine(own, "loads.csv"), files.GetValueOrDefault(PlanFileRules.LoadFile(site), "bus,load_mw\n"));
         }
     }

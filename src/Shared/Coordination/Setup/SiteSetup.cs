@@ -12,6 +12,9 @@ public sealed record SiteSetup
 
     public required string Site { get; init; }
 
+    /// <summary>HOST:PORT under which the site dials the coordinator; null where the command line says it.</summary>
+    public string? Coordinator { get; init; }
+
     /// <summary>Digest of the public plan data; equal at all sites and the coordinator.</summary>
     public required string SetupDigest { get; init; }
 
