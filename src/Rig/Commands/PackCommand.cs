@@ -1,4 +1,5 @@
 using System.CommandLine;
+using System.Globalization;
 using System.Net;
 using Halfvoice.Coordination;
 using Halfvoice.Rig.Authority;
@@ -26,7 +27,9 @@ internal static class PackCommand
     private static int Run(string planFolder, string folder, string coordinator, int days, Screen screen)
     {
         var colon = coordinator.LastIndexOf(':');
-        if (colon < 1 || !ushort.TryParse(coordinator[(colon + 1)..], out var port) || port == 0)
+        var host = colon < 1 ? string.Empty : coordinator[..colon].Trim('[', ']');
+        if (Uri.CheckHostName(host) == UriHostNameType.Unknown
+            || !ushort.TryParse(coordinator[(colon + 1)..], NumberStyles.None, CultureInfo.InvariantCulture, out var port) || port == 0)
             throw new RigException(ExitCodes.PlanWrong, $"--coordinator wants HOST:PORT, such as coordinator.lab:7443; it is '{coordinator}'.");
         if (days is < 1 or > 3650)
             throw new RigException(ExitCodes.PlanWrong, $"--days must be 1 to 3650; it is {days}.");
@@ -34,7 +37,6 @@ internal static class PackCommand
             throw new RigException(ExitCodes.PlanWrong,
                 $"{folder} is not empty. Bundles hold keys, so they are never mixed with other files or older bundles: give a new folder.");
         var (plan, _) = PlanLoader.Load(planFolder);
-        var host = coordinator[..colon].Trim('[', ']');
         var address = IPAddress.TryParse(host, out var parsed) ? parsed : null;
         using var authority = LabAuthority.Create(TimeSpan.FromDays(days), TimeProvider.System);
         new BundleWriter(plan, new SetupBuilder(plan), authority, authority.Certificate.NotAfter.ToUniversalTime(), coordinator).WriteAll(
