@@ -47,7 +47,7 @@ public class BanListTests
     [Fact]
     public async Task The_build_of_Shared_refuses_every_symbol_of_the_list_and_nothing_else()
     {
-        var project = Path.Combine(SourceTree.Root(), "src", "Shared");
+        var project = Repository.PathOf("src", "Shared");
         Assert.SkipUnless(File.Exists(Path.Combine(project, "obj", "project.assets.json")), "src/Shared was not restored here.");
         var folder = Directory.CreateTempSubdirectory("halfvoice-bans-");
         try
@@ -71,7 +71,7 @@ public class BanListTests
     }
 
     private static BannedSymbol[] Symbols() =>
-        [.. File.ReadAllLines(Path.Combine(SourceTree.Root(), "src", "Shared", "BannedSymbols.txt")).Where(line => line.Length > 0).Select(BannedSymbol.Parse)];
+        [.. File.ReadAllLines(Repository.PathOf("src", "Shared", "BannedSymbols.txt")).Where(line => line.Length > 0).Select(BannedSymbol.Parse)];
 
     /// <summary>Compiles the one file with everything that Shared's project says, and leaves nothing in the source tree.</summary>
     private static async Task<string> BuildAsync(string project, string folder, string snippet)

@@ -10,23 +10,13 @@ internal static class SourceTree
     /// <param name="extensions">With the dot, such as <c>.cs</c>.</param>
     public static IReadOnlyList<SourceFile> Files(params string[] extensions)
     {
-        var root = Root();
+        var root = Repository.Root;
         var files = Top.Select(name => new DirectoryInfo(Path.Combine(root, name))).SelectMany(Below)
             .Where(file => extensions.Contains(file.Extension, StringComparer.Ordinal))
             .Select(file => new SourceFile(Path.GetRelativePath(root, file.FullName).Replace('\\', '/'), File.ReadAllText(file.FullName)))
             .ToArray();
         Assert.NotEmpty(files);
         return files;
-    }
-
-    /// <summary>The folder that holds Agents.sln; the calling test is skipped where there is none above it.</summary>
-    public static string Root()
-    {
-        var folder = new DirectoryInfo(AppContext.BaseDirectory);
-        while (folder is not null && !File.Exists(Path.Combine(folder.FullName, "Agents.sln")))
-            folder = folder.Parent;
-        Assert.SkipWhen(folder is null, "The source tree is not at hand: no folder above the tests holds Agents.sln.");
-        return folder!.FullName;
     }
 
     private static IEnumerable<FileInfo> Below(DirectoryInfo folder) => folder.EnumerateFiles()

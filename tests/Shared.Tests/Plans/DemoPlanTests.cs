@@ -8,7 +8,7 @@ public class DemoPlanTests
     [InlineData("three-fords", 2)]
     public void Every_snapshot_is_feasible_with_limits_five_percent_tighter_and_dearer_with_limits_than_without(string name, int snapshots)
     {
-        var plan = PlanFolders.Read(Path.Combine(PlanFolders.Repository, "deploy", "plans", name)).Plan!;
+        var plan = PlanFolders.Read(Repository.PathOf("deploy", "plans", name)).Plan!;
         Assert.Equal(snapshots, plan.Loads.Values.Max(series => series.Count));
         for (var cycle = 1; cycle <= snapshots; cycle++)
         {

@@ -79,12 +79,5 @@ public partial class ProofTests
 
     private static string Name(string path) => Path.GetRelativePath(Root(), path).Replace('\\', '/');
 
-    private static string Root()
-    {
-        var folder = new DirectoryInfo(AppContext.BaseDirectory);
-        while (folder is not null && !File.Exists(Path.Combine(folder.FullName, "Agents.sln")))
-            folder = folder.Parent;
-        Assert.SkipWhen(folder is null, "The source tree is not at hand: no folder above the tests holds Agents.sln.");
-        return Path.Combine(folder!.FullName, "src", "Shared", "Privacy");
-    }
+    private static string Root() => Repository.PathOf("src", "Shared", "Privacy");
 }

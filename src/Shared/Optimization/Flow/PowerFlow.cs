@@ -41,4 +41,19 @@ public sealed class PowerFlow
             flows[l] = _grid.SusceptanceMwPerRad[l] * (_angle[_grid.From[l]] - _angle[_grid.To[l]]);
         return flows;
     }
+
+    /// <summary>
+    /// Change of one line's flow, MW per MW injected at each bus and taken out at the first bus of its island; zero in other
+    /// islands. B is symmetric, so b (e_from − e_to)ᵀ B⁻¹ is the transpose of one solve: B s = b (e_from − e_to).
+    /// </summary>
+    /// <param name="line">Index of the line.</param>
+    public double[] Sensitivity(int line)
+    {
+        Array.Clear(_injection);
+        _injection[_grid.From[line]] = _grid.SusceptanceMwPerRad[line];
+        _injection[_grid.To[line]] = -_grid.SusceptanceMwPerRad[line];
+        var sensitivity = new double[_grid.BusCount];
+        _system.Solve(_injection, sensitivity);
+        return sensitivity;
+    }
 }

@@ -1,4 +1,5 @@
 using Halfvoice.Grid;
+using Halfvoice.Optimization;
 
 namespace Halfvoice.Plans;
 
@@ -17,11 +18,8 @@ internal sealed class InventedLimits
     private const double LeastLimitMw = 25;
     private const int MostSwaps = 24;
 
-    // Each congested line takes a solve; beyond this many a larger network would only take longer to make.
-    private const int MostCongested = 80;
-
     private readonly Network _network;
-    private readonly DcFlow _flow;
+    private readonly PowerFlow _flow;
     private readonly double[][] _loadMw;
     private readonly double[][] _freeFlow;
     private readonly double[] _shifted;
@@ -29,7 +27,7 @@ internal sealed class InventedLimits
     private InventedLimits(Network network, double[][] loadMw)
     {
         _network = network;
-        _flow = new DcFlow(network);
+        _flow = new PowerFlow(network);
         _loadMw = loadMw;
         _freeFlow = Array.ConvertAll(loadMw, load => FlowsOf(Cheapest(load), load));
         _shifted = Cheapest(loadMw[0]);
@@ -42,7 +40,7 @@ internal sealed class InventedLimits
     private double[]? Choose(SeededNumbers numbers)
     {
         var lines = _network.Lines.Count;
-        var congested = Congest(Math.Clamp((int)Math.Round(0.03 * lines), 1, MostCongested), numbers);
+        var congested = Congest(Math.Max(1, (int)Math.Round(0.03 * lines)), numbers);
         var shiftedFlow = Array.ConvertAll(_loadMw, load => FlowsOf(Follow(load), load));
         var limits = new double[lines];
         var binding = 0;
@@ -151,6 +149,6 @@ internal sealed class InventedLimits
         var injection = Array.ConvertAll(loadMw, load => -load);
         for (var g = 0; g < output.Length; g++)
             injection[_network.Generators[g].Bus] += output[g];
-        return _flow.Flows(injection);
+        return _flow.FlowMw(injection);
     }
 }
