@@ -81,12 +81,12 @@ public sealed class FrameFuzzTests
         var site = NewSite(setup, plan);
         foreach (var cycle in new[] { plan.Cycles + 1, int.MaxValue })
         {
-            var step = site.Step(new SiteInput.Asked(new Ask(new RoundId(cycle, 1), true, [0], [0])));
+            var step = site.Step(new SiteInput.Asked(new Ask(new RoundId(cycle, 1), true, [0], [0])), TimeSpan.FromSeconds(1));
             Assert.Equal(RefusalReason.OutOfRange, Assert.IsType<SiteReply.Refused>(step.Reply).Refusal.Reason);
             Assert.Empty(step.Charges);
         }
 
-        Assert.IsType<SiteReply.Answered>(site.Step(new SiteInput.Asked(new Ask(new RoundId(plan.Cycles, 1), true, [0], [0]))).Reply);
+        Assert.IsType<SiteReply.Answered>(site.Step(new SiteInput.Asked(new Ask(new RoundId(plan.Cycles, 1), true, [0], [0])), TimeSpan.FromSeconds(1)).Reply);
     }
 
     private static SiteCore NewSite(SiteSetup setup, Plan plan) =>
@@ -95,7 +95,7 @@ public sealed class FrameFuzzTests
     /// <returns>1 where the site answered.</returns>
     private static int Take(SiteCore site, SiteInput input, Dictionary<long, ChargeRow> ledger, int components)
     {
-        var step = site.Step(input);
+        var step = site.Step(input, TimeSpan.FromSeconds(1));
         foreach (var row in step.Charges)
             ledger[row.Id] = row;
         Assert.All(step.SetPoints, point => Assert.True(double.IsFinite(point.Mw)));

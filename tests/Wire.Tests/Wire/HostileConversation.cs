@@ -125,7 +125,7 @@ internal sealed class HostileConversation
             };
             if (input is null || next.Site == Hostile)
                 continue;
-            var reply = _sites[next.Site].Step(input).Reply;
+            var reply = _sites[next.Site].Step(input, TimeSpan.FromSeconds(1)).Reply;
             _sites[next.Site].PrepareNoise();
             if (reply is SiteReply.Answered answered)
                 Take(new CoordinatorInput.AnswerArrived(next.Site, answered.Answer));
