@@ -12,12 +12,13 @@ internal static class InventedSettings
 
     private const double CyclesPerDay = 288;
 
+    /// <summary>Trials of up to 2,000 sites settled within 21 rounds; every round more takes its share of the allowance.</summary>
+    private const int RoundCap = 30;
+
     public static Plan Around(string name, Network network, IReadOnlyDictionary<string, LoadSeries> loads, double loadMw)
     {
-        var rounds = network.Sites.Count <= 50 ? 40 : 60;
-
-        // Basic composition gives each of n rounds ε/n, and Laplace noise at ε/n has scale adjacency · n / ε.
-        var epsilon = Math.Round(AdjacencyMw * rounds / NoiseScaleMw, 3);
+        // Basic composition gives each of the cap's n rounds ε/n, and Laplace noise at ε/n has scale adjacency · n / ε.
+        var epsilon = Math.Round(AdjacencyMw * RoundCap / NoiseScaleMw, 3);
 
         // A sum of N independent Laplace draws has standard deviation √(2N) · scale; four of them are rarely passed.
         var noiseMw = 4 * NoiseScaleMw * Math.Sqrt(2.0 * network.Sites.Count);
@@ -27,9 +28,9 @@ internal static class InventedSettings
             Cycles = 3,
             Stop = new StopSettings
             {
-                MismatchFraction = 0.02,
+                MismatchFraction = 0.01,
                 PriceMovePerMwh = 0.5,
-                RoundCap = rounds,
+                RoundCap = RoundCap,
                 ReferenceLoadMw = 10 * Math.Ceiling(loadMw / 10),
             },
             Privacy = new PrivacySettings { AdjacencyMw = AdjacencyMw, Epsilon = epsilon, Stated = true },
