@@ -53,5 +53,14 @@ public static class RigCommandLine
             await Console.Error.WriteLineAsync($"The command broke: {failure.Message}").ConfigureAwait(false);
             return ExitCodes.Broke;
         }
+#pragma warning disable CA1031 // The last resort: what nobody foresaw is told and ends the command as broken.
+        catch (Exception unforeseen)
+#pragma warning restore CA1031
+        {
+            await Console.Error.WriteLineAsync(
+                $"The command broke in a way that was not foreseen ({unforeseen.GetType().Name}): {unforeseen.Message} This is a defect of the rig.")
+                .ConfigureAwait(false);
+            return ExitCodes.Broke;
+        }
     }
 }

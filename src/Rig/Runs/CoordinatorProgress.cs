@@ -43,7 +43,7 @@ public sealed record CoordinatorProgress(string Event)
         {
             using var document = JsonDocument.Parse(line);
             var root = document.RootElement;
-            return new CoordinatorProgress(root.GetProperty("event").GetString() ?? string.Empty)
+            return new CoordinatorProgress(Text(root, "event"))
             {
                 Port = (int)Number(root, "port"),
                 Joined = (int)Number(root, "joined"),
@@ -52,7 +52,7 @@ public sealed record CoordinatorProgress(string Event)
                 Answered = (int)Number(root, "answered"),
                 Asked = (int)Number(root, "asked"),
                 Settled = root.TryGetProperty("settled", out var settled) && settled.ValueKind == JsonValueKind.True,
-                End = root.TryGetProperty("end", out var end) ? end.GetString() ?? string.Empty : string.Empty,
+                End = Text(root, "end"),
                 Rounds = (int)Number(root, "rounds"),
                 Seconds = Number(root, "seconds"),
                 MismatchMw = Number(root, "mismatch_mw"),
@@ -66,6 +66,9 @@ public sealed record CoordinatorProgress(string Event)
             return null;
         }
     }
+
+    private static string Text(JsonElement root, string name) =>
+        root.TryGetProperty(name, out var value) && value.ValueKind == JsonValueKind.String ? value.GetString()! : string.Empty;
 
     private static double Number(JsonElement root, string name) =>
         root.TryGetProperty(name, out var value) && value.ValueKind == JsonValueKind.Number ? value.GetDouble() : 0;

@@ -44,8 +44,17 @@ public sealed class Rehearsal
     {
         WriteInputs();
         var optima = Optima();
-        await using var fleet = new ProcessFleet(killOnSignals: true, cancel);
-        await RunProcessesAsync(fleet, cancel).ConfigureAwait(false);
+        try
+        {
+            await RunProcessesAsync(cancel).ConfigureAwait(false);
+        }
+        finally
+        {
+            // After a rehearsal that broke they are needed most.
+            CollectLogs();
+        }
+
+        cancel.ThrowIfCancellationRequested();
         var scorer = new RunScorer(_plan, _setups, _folder, optima);
         var verdict = scorer.Judge(options, _binaries.Description);
         await File.WriteAllTextAsync(_folder.Verdict, verdict.ToJson() + Environment.NewLine, cancel).ConfigureAwait(false);
@@ -82,8 +91,11 @@ public sealed class Rehearsal
         return optima;
     }
 
-    private async Task RunProcessesAsync(ProcessFleet fleet, CancellationToken cancel)
+    private async Task RunProcessesAsync(CancellationToken cancel)
     {
+        // The command line turns a signal into a cancellation, and the cancellation closes the fleet: so a closed fleet always
+        // means a cancelled run, and is never taken for a process that failed.
+        await using var fleet = new ProcessFleet(killOnSignals: false, cancel);
         var finished = new TaskCompletionSource(TaskCreationOptions.RunContinuationsAsynchronously);
         var ready = new TaskCompletionSource<int>(TaskCreationOptions.RunContinuationsAsynchronously);
         var began = TimeProvider.System.GetTimestamp();
@@ -107,34 +119,46 @@ public sealed class Rehearsal
         });
         var watch = WatchAsync(fleet, coordinator, finished.Task, cancel);
         var first = await Task.WhenAny(ready.Task, watch, Task.Delay(ReadyWithin, cancel)).ConfigureAwait(false);
+        cancel.ThrowIfCancellationRequested();
         if (first == watch)
             await watch.ConfigureAwait(false);
         if (!ready.Task.IsCompletedSuccessfully)
             throw new RigException(ExitCodes.Broke, $"The coordinator did not listen within {ReadyWithin.TotalSeconds:0} s. See {_folder.Logs}.");
         began = TimeProvider.System.GetTimestamp();
+        var port = await ready.Task.ConfigureAwait(false);
         foreach (var site in _plan.Network.Sites)
-            StartAgent(fleet, site, await ready.Task.ConfigureAwait(false));
+            StartAgent(fleet, site, port, cancel);
         await watch.ConfigureAwait(false);
         foreach (var child in fleet.Running)
             child.ExpectExit();
         await Task.WhenAny(Task.WhenAll(fleet.Running.Select(child => child.Exited)), Task.Delay(StopGrace, cancel)).ConfigureAwait(false);
         await fleet.StopAllAsync(StopGrace).ConfigureAwait(false);
-        CollectLogs();
     }
 
-    private void StartAgent(ProcessFleet fleet, string site, int port) => fleet.Start(new ChildStart($"agent {site}", _binaries.AgentPath,
-        ["--bundle", BundleWriter.SiteFolder(_folder.Bundles, site), "--state", _folder.SiteState(site),
-         "--coordinator", string.Create(CultureInfo.InvariantCulture, $"127.0.0.1:{port}")])
+    private void StartAgent(ProcessFleet fleet, string site, int port, CancellationToken cancel)
     {
-        ErrorLogPath = Path.Combine(_folder.Logs, $"agent-{site}.err"),
-        Environment = _binaries.Environment,
-    });
+        var start = new ChildStart($"agent {site}", _binaries.AgentPath,
+            ["--bundle", BundleWriter.SiteFolder(_folder.Bundles, site), "--state", _folder.SiteState(site),
+             "--coordinator", string.Create(CultureInfo.InvariantCulture, $"127.0.0.1:{port}")])
+        {
+            ErrorLogPath = Path.Combine(_folder.Logs, $"agent-{site}.err"),
+            Environment = _binaries.Environment,
+        };
+        try
+        {
+            fleet.Start(start);
+        }
+        catch (InvalidOperationException closed) when (cancel.IsCancellationRequested)
+        {
+            throw new OperationCanceledException("Stopped while agents were being started.", closed, cancel);
+        }
+    }
 
     /// <summary>Waits for the coordinator's end; ends early with the reason when a process dies or time runs out.</summary>
     private async Task WatchAsync(ProcessFleet fleet, ChildProcess coordinator, Task finished, CancellationToken cancel)
     {
         using var limit = CancellationTokenSource.CreateLinkedTokenSource(cancel);
-        limit.CancelAfter(LongestRun());
+        limit.CancelAfter(LongestRun.Of(_plan));
         var died = FirstFailureAsync(fleet, limit.Token);
         var first = await Task.WhenAny(finished, died).ConfigureAwait(false);
         cancel.ThrowIfCancellationRequested();
@@ -146,7 +170,7 @@ public sealed class Rehearsal
 
         if (died.IsCanceled)
         {
-            throw new RigException(ExitCodes.Broke, $"The rehearsal did not end within {LongestRun().TotalMinutes:0} minutes, "
+            throw new RigException(ExitCodes.Broke, $"The rehearsal did not end within {LongestRun.Of(_plan).TotalMinutes:0} minutes, "
                 + $"the longest that its rounds and deadlines allow. See {_folder.Logs}.");
         }
 
@@ -164,10 +188,6 @@ public sealed class Rehearsal
         }
     }
 
-    private TimeSpan LongestRun() =>
-        TimeSpan.FromSeconds(CoordinatorCore.GatherSeconds + 120)
-        + (_plan.Cycles * (double)_plan.Stop.RoundCap * (_plan.Rounds.Deadline + TimeSpan.FromMilliseconds(50)));
-
     /// <summary>Puts the processes' own logs beside the rig's, one file each.</summary>
     private void CollectLogs()
     {
@@ -178,8 +198,16 @@ public sealed class Rehearsal
         void Copy(string from, string name, string to)
         {
             var source = Path.Combine(from, name);
-            if (File.Exists(source))
-                File.Copy(source, Path.Combine(_folder.Logs, to), overwrite: true);
+            try
+            {
+                if (File.Exists(source))
+                    File.Copy(source, Path.Combine(_folder.Logs, to), overwrite: true);
+            }
+            catch (Exception problem) when (problem is IOException or UnauthorizedAccessException)
+            {
+                // The run's own outcome weighs more than a log that stays where its process wrote it.
+                _view.Say($"{to} could not be copied to {_folder.Logs}: {problem.Message}");
+            }
         }
     }
 }

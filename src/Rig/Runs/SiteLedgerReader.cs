@@ -1,3 +1,4 @@
+using Halfvoice.Privacy;
 using Microsoft.Data.Sqlite;
 
 namespace Halfvoice.Rig.Runs;
@@ -5,8 +6,6 @@ namespace Halfvoice.Rig.Runs;
 /// <summary>What a rehearsal reads from a site's own ledger after its agent has ended. In the field nobody does.</summary>
 public static class SiteLedgerReader
 {
-    private const double UnitsPerEpsilon = 1e12;
-
     /// <summary>Set-points by cycle and generator, MW, and privacy charged by cycle.</summary>
     public static (IReadOnlyList<(int Cycle, string Generator, double Mw, bool Accepted)> SetPoints, IReadOnlyDictionary<int, double> EpsilonByCycle)
         Read(string path)
@@ -31,7 +30,7 @@ public static class SiteLedgerReader
                 """;
             using var reader = command.ExecuteReader();
             while (reader.Read())
-                epsilon[reader.GetInt32(0)] = reader.GetInt64(1) / UnitsPerEpsilon;
+                epsilon[reader.GetInt32(0)] = reader.GetInt64(1) / (double)EpsilonUnits.PerOne;
         }
 
         return (points, epsilon);

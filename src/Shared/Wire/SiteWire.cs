@@ -75,8 +75,8 @@ public sealed class SiteWire
     {
         if (enrol.LatticeExponent is < -200 or > 200)
             return (null, new WireFault(RefusalReason.OutOfRange, "The lattice exponent must be within -200 to 200."));
-        if (!(enrol.NoiseScale >= 0) || !double.IsFinite(enrol.NoiseScale))
-            return (null, new WireFault(RefusalReason.OutOfRange, "The noise scale must be finite and not negative."));
+        if (!(enrol.NoiseScale is >= 0 and <= WireContract.MaxNoiseScale))
+            return (null, new WireFault(RefusalReason.OutOfRange, "The noise scale must be finite, not negative and at most 1e30."));
         if (!(enrol.EpsilonPerAnswer >= 0) || !double.IsFinite(enrol.EpsilonPerAnswer))
             return (null, new WireFault(RefusalReason.OutOfRange, "The epsilon must be finite and not negative."));
         if (enrol.Site.Length > WireContract.MaxText || enrol.SetupDigest.Length > WireContract.MaxText)

@@ -12,6 +12,12 @@ public static class WireContract
     /// <summary>Largest number of components in an ask or answer.</summary>
     public const int MaxComponents = 50_000;
 
+    /// <summary>
+    /// Largest noise scale that a site may declare, MW or rad: far above what any plan gives, and small enough that sums and
+    /// squares over all components stay finite.
+    /// </summary>
+    public const double MaxNoiseScale = 1e30;
+
     /// <summary>Longest text that a peer may send, characters.</summary>
     public const int MaxText = 500;
 

@@ -79,10 +79,11 @@ public class RuleTests
     [Theory]
     [InlineData("Thread.", "Sleep(1);")]
     [InlineData("await Task.", "Delay(1);")]
-    public void A_sleep_is_found_in_a_test_and_allowed_in_the_product(string first, string second)
+    public void A_sleep_is_found_in_a_test_and_allowed_in_the_product_and_in_benchmarks(string first, string second)
     {
         Assert.Single(Rules.Sleeps(new SourceFile("tests/A.cs", first + second)));
         Assert.Empty(Rules.Sleeps(Source(first + second)));
+        Assert.Empty(Rules.Sleeps(new SourceFile("tests/Benchmarks/A.cs", first + second)));
     }
 
     [Theory]

@@ -38,7 +38,7 @@ internal static class Rules
 
     /// <summary>A test that sleeps is slow when it passes and wrong when the machine is busy.</summary>
     public static IEnumerable<string> Sleeps(SourceFile file) =>
-        file.IsTest ? Words(file, Sleeping, "a sleep in a test; wait on a signal") : [];
+        file.IsTest && !file.IsBenchmark ? Words(file, Sleeping, "a sleep in a test; wait on a signal") : [];
 
     public static IEnumerable<string> MachinePaths(SourceFile file) => file.Lines().Index()
         .Where(line => MachinePath.IsMatch(line.Item))

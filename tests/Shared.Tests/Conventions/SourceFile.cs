@@ -6,5 +6,8 @@ internal sealed record SourceFile(string Path, string Text)
 {
     public bool IsTest => Path.StartsWith("tests/", StringComparison.Ordinal);
 
+    /// <summary>Benchmarks lie among the tests and are none: one that samples memory does so at intervals.</summary>
+    public bool IsBenchmark => Path.StartsWith("tests/Benchmarks/", StringComparison.Ordinal);
+
     public string[] Lines() => Text.TrimEnd('\n').Split('\n');
 }
