@@ -76,7 +76,8 @@ internal static class AgentProgram
             log.Warning("Forfeited {Reservations} reservations that were open when the last agent ended", forfeited.Count);
 
         using var authority = BundleFile.Read(options.Bundle, "authority.pem", X509CertificateLoader.LoadCertificateFromFile);
-        using var identity = BundleFile.Read(options.Bundle, "identity.pem", path => X509Certificate2.CreateFromPemFile(path, Path.ChangeExtension(path, "key")));
+        using var identity = BundleFile.Read(options.Bundle, "identity.pem",
+            path => X509Certificate2.CreateFromPemFile(path, Path.ChangeExtension(path, "key")));
         var revoked = new RevocationListFile(Path.Combine(options.Bundle, "revoked.crl"), authority);
         var validator = new PeerValidator(authority, () => revoked.Current, TimeProvider.System);
         using var stop = new CancellationTokenSource();

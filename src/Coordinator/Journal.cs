@@ -116,7 +116,8 @@ internal sealed class Journal : IDisposable
     {
         5 or 6 => "Another coordinator has this journal open. A plan has one coordinator.",
         1 => "The file in the journal's place is not a journal of this version of the coordinator. Give it an empty state folder.",
-        11 or 26 => "The journal is damaged. Restore it from its last sound copy; with an empty state folder sites refuse the rounds that they answered before.",
+        11 or 26 => "The journal is damaged. Restore it from its last sound copy; "
+            + "with an empty state folder sites refuse the rounds that they answered before.",
         14 => "The journal cannot be opened: something else is in its place, or the state folder may not be written.",
         _ => null,
     };

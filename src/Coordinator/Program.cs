@@ -76,7 +76,8 @@ internal static class CoordinatorProgram
         using var progress = new ProgressLines(Console.OpenStandardOutput(), setup);
         using var host = new DispatchHost(setup, core, journal, progress, TimeProvider.System, log);
         using var authority = BundleFile.Read(options.Bundle, "authority.pem", X509CertificateLoader.LoadCertificateFromFile);
-        using var identity = BundleFile.Read(options.Bundle, "identity.pem", path => X509Certificate2.CreateFromPemFile(path, Path.ChangeExtension(path, "key")));
+        using var identity = BundleFile.Read(options.Bundle, "identity.pem",
+            path => X509Certificate2.CreateFromPemFile(path, Path.ChangeExtension(path, "key")));
         var revoked = new RevocationListFile(Path.Combine(options.Bundle, "revoked.crl"), authority);
         var caller = new CallerIdentity(new PeerValidator(authority, () => revoked.Current, TimeProvider.System), log);
         await using var app = BuildServer(options, host, caller, identity, log);

@@ -19,7 +19,8 @@ public static class ExchangeBenchmark
     private static readonly TimeSpan _patience = TimeSpan.FromMinutes(5);
 
     /// <summary>
-    /// Measures the bare exchange, the real one, and the bare one again, and prints all. Arguments: <c>--clients 12,118</c>, <c>--rounds 1000</c>, <c>--components 1</c>,
+    /// Measures the bare exchange, the real one, and the bare one again, and prints all. Arguments:
+    /// <c>--clients 12,118</c>, <c>--rounds 1000</c>, <c>--components 1</c>,
     /// <c>--jit</c>.
     /// </summary>
     /// <returns>0, 1 where the real exchange missed its ratio to the better bare one, or 64 for arguments that make no sense.</returns>

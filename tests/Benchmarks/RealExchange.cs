@@ -40,7 +40,8 @@ public static class RealExchange
             await done.CancelAsync().ConfigureAwait(false);
             var total = verdict.Cycles.Sum(cycle => cycle.Rounds);
             return new RealExchangeResult(
-                sites, total, total / verdict.Cycles.Sum(cycle => cycle.Seconds), rehearsal.ReadyAfter?.TotalSeconds ?? double.NaN, await memory.ConfigureAwait(false));
+                sites, total, total / verdict.Cycles.Sum(cycle => cycle.Seconds), rehearsal.ReadyAfter?.TotalSeconds ?? double.NaN,
+                await memory.ConfigureAwait(false));
         }
         finally
         {

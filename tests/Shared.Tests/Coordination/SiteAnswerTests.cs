@@ -165,7 +165,11 @@ public class SiteAnswerTests
     public void The_wildest_asks_and_outcomes_get_a_bounded_answer(SchemeKind kind)
     {
         var plan = InventedPlans.Make(4, 5, 3, 1) with { Scheme = new SchemeSettings { Kind = kind } };
-        plan = plan with { Privacy = new PrivacySettings { Mechanism = MechanismKind.None, Stated = true } };
+        plan = plan with
+        {
+            Privacy = new PrivacySettings { Mechanism = MechanismKind.None, Stated = true },
+            Stop = plan.Stop with { RoundCap = 40 },
+        };
         var random = new Random(7);
         foreach (var one in new[] { plan, SmallPlan.Of(2, 2) with { Scheme = plan.Scheme } })
         {

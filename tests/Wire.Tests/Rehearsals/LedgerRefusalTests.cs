@@ -58,7 +58,11 @@ public sealed class LedgerRefusalTests
         await AssertRefusedAsync(lab.StartAgent("mid", bundle: lab.NewFolder("empty")), "site.json");
         await AssertRefusedAsync(lab.StartAgent("mid", bundle: file), "site.json");
 
-        foreach (var (part, words) in new[] { ("site.json", "site.json"), ("loads.csv", "loads"), ("identity.key", "identity"), ("identity.pem", "identity"), ("authority.pem", "authority") })
+        (string Part, string Words)[] parts =
+        [
+            ("site.json", "site.json"), ("loads.csv", "loads"), ("identity.key", "identity"), ("identity.pem", "identity"), ("authority.pem", "authority"),
+        ];
+        foreach (var (part, words) in parts)
         {
             var bundle = lab.NewFolder("damaged-" + part);
             foreach (var path in Directory.GetFiles(lab.SiteBundle("mid")))

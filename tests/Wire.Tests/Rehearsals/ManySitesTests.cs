@@ -43,7 +43,8 @@ public sealed partial class ManySitesTests : IDisposable
         // Measured, and told to whoever reads the test's output; not judged here, because other work shares the machine.
         TestContext.Current.TestOutputHelper?.WriteLine(ReadyLine().Match(rig.Errors).Value);
         if (resident.Count > 0)
-            TestContext.Current.TestOutputHelper?.WriteLine(string.Create(CultureInfo.InvariantCulture, $"resident, kB: largest {resident.Max()}, median {resident.Order().ElementAt(resident.Count / 2)}"));
+            TestContext.Current.TestOutputHelper?.WriteLine(string.Create(CultureInfo.InvariantCulture,
+                $"resident, kB: largest {resident.Max()}, median {resident.Order().ElementAt(resident.Count / 2)}"));
     }
 
     public void Dispose() => _folder.Dispose();

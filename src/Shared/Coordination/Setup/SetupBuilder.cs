@@ -121,7 +121,8 @@ public sealed class SetupBuilder
     private static string Digest(CoordinatorSetup setup, IEnumerable<Line> tieLines)
     {
         var text = new StringBuilder();
-        text.Append(CultureInfo.InvariantCulture, $"{setup.Plan}|{setup.Scheme}|{setup.BaseMva:R}|{setup.PriceScalePerMwh:R}|{setup.RoundCap}|{setup.Cycles}\n");
+        text.Append(CultureInfo.InvariantCulture, $"{setup.Plan}|{setup.Scheme}|{setup.BaseMva:R}|");
+        text.Append(CultureInfo.InvariantCulture, $"{setup.PriceScalePerMwh:R}|{setup.RoundCap}|{setup.Cycles}\n");
         foreach (var site in setup.Sites)
         {
             text.Append(site.Name).Append('\n');
