@@ -29,6 +29,19 @@ internal sealed class AgentHost
         _log = log;
     }
 
+    /// <summary>A core that breaks its own rules is no lost link: it must end the agent and not be dialled away.</summary>
+    private SiteStep Decide(SiteInput input)
+    {
+        try
+        {
+            return _core.Step(input, Now);
+        }
+        catch (InvalidOperationException broken)
+        {
+            throw new SiteBrokenException("The site's own computation failed; the agent stops and answers nothing.", broken);
+        }
+    }
+
     private enum StreamEnd
     {
         LinkLost,
@@ -140,7 +153,7 @@ internal sealed class AgentHost
     private async Task DoAsync(
         AsyncDuplexStreamingCall<V1.FromSite, V1.FromCoordinator> call, CoordinatorWire wire, SiteInput input)
     {
-        var step = _core.Step(input, Now);
+        var step = Decide(input);
         _ledger.Store(step.Charges, step.SetPoints);
         switch (step.Reply)
         {

@@ -44,7 +44,7 @@ internal static class AgentProgram
             log.Fatal("Cannot start: {Problem}", wrong.Message);
             return ExitCodes.WrongSetup;
         }
-        catch (Exception broken) when (broken is IOException or SqliteException or InvalidOperationException)
+        catch (Exception broken) when (broken is IOException or SqliteException or InvalidOperationException or SiteBrokenException)
         {
             log.Fatal("Broken off: {Problem}", broken.Message);
             return ExitCodes.Broken;

@@ -44,7 +44,7 @@ internal sealed class SiteLedger : IDisposable
         {
             connection.Open();
             var ledger = new SiteLedger(connection, time);
-            ledger.Execute("PRAGMA locking_mode=EXCLUSIVE; PRAGMA journal_mode=WAL; PRAGMA synchronous=FULL;");
+            ledger.Execute("PRAGMA locking_mode=EXCLUSIVE; PRAGMA journal_mode=WAL; PRAGMA synchronous=FULL; PRAGMA cache_size=-128;");
             ledger.Execute("BEGIN EXCLUSIVE; " + Create + " COMMIT;");
             ledger.CheckMeta("schema", SchemaVersion.ToString(CultureInfo.InvariantCulture), "another version of the agent");
             ledger.CheckMeta("site", setup.Site, "another site");

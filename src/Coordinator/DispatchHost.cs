@@ -152,7 +152,7 @@ internal sealed class DispatchHost : IDisposable
         foreach (var (site, message) in step.Send)
         {
             if (_seats[site] is { } stream && !stream.TrySend(message))
-                stream.Complete();
+                stream.CutOff();
         }
 
         foreach (var news in step.News)
@@ -187,7 +187,7 @@ internal sealed class DispatchHost : IDisposable
         foreach (var seat in _seats)
         {
             if (seat is not null && !seat.TrySendPulse())
-                seat.Complete();
+                seat.CutOff();
         }
     }
 

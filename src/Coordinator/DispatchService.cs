@@ -25,7 +25,7 @@ internal sealed class DispatchService : V1.Dispatch.DispatchBase
     {
         var site = _identity.SiteOf(context);
         var index = _host.IndexOf(site) ?? throw _identity.NotOfThePlan(site);
-        var stream = new SiteStream(index, site, responseStream);
+        var stream = new SiteStream(index, site, responseStream, context.GetHttpContext().Abort);
         var read = ReadAllAsync(stream, requestStream, context.CancellationToken);
         try
         {

@@ -19,6 +19,7 @@ internal sealed class SiteStream
     private const int FrameBytes = 5;
 
     private readonly IServerStreamWriter<V1.FromCoordinator> _writer;
+    private readonly Action _abort;
     private readonly Lock _gate = new();
     private readonly Queue<V1.FromCoordinator> _waiting = new();
     private readonly TaskCompletionSource _sent = new(TaskCreationOptions.RunContinuationsAsynchronously);
@@ -27,11 +28,16 @@ internal sealed class SiteStream
     private long _bytesDown;
     private long _bytesUp;
 
-    public SiteStream(int site, string name, IServerStreamWriter<V1.FromCoordinator> writer)
+    /// <param name="site">Index of the site.</param>
+    /// <param name="name">Its name.</param>
+    /// <param name="writer">Where messages go.</param>
+    /// <param name="abort">Cuts the connection off.</param>
+    public SiteStream(int site, string name, IServerStreamWriter<V1.FromCoordinator> writer, Action abort)
     {
         Site = site;
         Name = name;
         _writer = writer;
+        _abort = abort;
     }
 
     public int Site { get; }
@@ -54,6 +60,13 @@ internal sealed class SiteStream
     public bool TrySendPulse() => TrySend(Wire.WritePulse());
 
     public void CountUp(IMessage message) => Interlocked.Add(ref _bytesUp, message.CalculateSize() + FrameBytes);
+
+    /// <summary>Cuts off a site that answers pings but no longer reads what it is sent.</summary>
+    public void CutOff()
+    {
+        GiveUp();
+        _abort();
+    }
 
     /// <summary>Nothing more will be sent; what waits still leaves.</summary>
     public void Complete()
