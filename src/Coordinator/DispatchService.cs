@@ -1,3 +1,4 @@
+using System.Threading.Channels;
 using Google.Protobuf;
 using Grpc.Core;
 using Halfvoice.Coordination;
@@ -64,7 +65,7 @@ internal sealed class DispatchService : V1.Dispatch.DispatchBase
             await writer.WriteAsync(message, cancel).ConfigureAwait(false);
     }
 
-    /// <returns>True when it ended at a faulty message, false when the site said that it was done.</returns>
+    /// <returns>True when it ended at a faulty message that the host has yet to answer, false when the site said that it was done.</returns>
     private async Task<bool> ReadAllAsync(SiteStream stream, IAsyncStreamReader<V1.FromSite> reader, CancellationToken cancel)
     {
         var enrolled = false;
@@ -86,9 +87,26 @@ internal sealed class DispatchService : V1.Dispatch.DispatchBase
 
             if (next is HostEvent.Leaving)
                 return false;
-            await _host.Events.Writer.WriteAsync(next, cancel).ConfigureAwait(false);
+            var heard = await OfferAsync(next, cancel).ConfigureAwait(false);
             if (next is HostEvent.Faulty)
-                return true;
+                return heard;
+        }
+    }
+
+    /// <summary>
+    /// Hands an event to the host; false once the run is over. What is under way then no longer matters, and it must not end the
+    /// stream before the farewell has left: the site hangs up when it has read it.
+    /// </summary>
+    private async Task<bool> OfferAsync(HostEvent next, CancellationToken cancel)
+    {
+        try
+        {
+            await _host.Events.Writer.WriteAsync(next, cancel).ConfigureAwait(false);
+            return true;
+        }
+        catch (ChannelClosedException)
+        {
+            return false;
         }
     }
 
