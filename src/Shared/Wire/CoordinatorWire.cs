@@ -69,8 +69,8 @@ public sealed class CoordinatorWire
             return (null, new WireFault(RefusalReason.Malformed, "An ask names its cycle and round."));
         if (ask.Consensus.Count > WireContract.MaxComponents || ask.Consensus.Count != ask.Dual.Count)
             return (null, new WireFault(RefusalReason.Malformed, "An ask has one consensus value and one dual for each component."));
-        if (!AllFinite(ask.Consensus) || !AllFinite(ask.Dual))
-            return (null, new WireFault(RefusalReason.OutOfRange, "A number of the ask is not finite."));
+        if (!AllUsable(ask.Consensus) || !AllUsable(ask.Dual))
+            return (null, new WireFault(RefusalReason.OutOfRange, "A number of the ask is not finite, or is beyond any network."));
         return (new FromCoordinatorMessage.Asked(new Ask(id, ask.Everything, [.. ask.Consensus], [.. ask.Dual])), null);
     }
 
@@ -80,17 +80,17 @@ public sealed class CoordinatorWire
             return (null, new WireFault(RefusalReason.Malformed, "An outcome names its cycle, its end and its rounds."));
         if (outcome.Consensus.Count > WireContract.MaxComponents || outcome.Dual.Count != outcome.Consensus.Count)
             return (null, new WireFault(RefusalReason.Malformed, "An outcome has one consensus value and one dual for each component."));
-        if (!AllFinite(outcome.Consensus) || !AllFinite(outcome.Dual))
-            return (null, new WireFault(RefusalReason.OutOfRange, "A number of the outcome is not finite."));
+        if (!AllUsable(outcome.Consensus) || !AllUsable(outcome.Dual))
+            return (null, new WireFault(RefusalReason.OutOfRange, "A number of the outcome is not finite, or is beyond any network."));
         var read = new Outcome(id.Cycle, (CycleEnd)((int)outcome.End - 1), (int)outcome.Rounds, [.. outcome.Consensus], [.. outcome.Dual]);
         return (new FromCoordinatorMessage.Ended(read), null);
     }
 
-    private static bool AllFinite(IEnumerable<double> values)
+    private static bool AllUsable(IEnumerable<double> values)
     {
         foreach (var value in values)
         {
-            if (!double.IsFinite(value))
+            if (!(Math.Abs(value) <= WireContract.MaxMagnitude))
                 return false;
         }
 

@@ -18,6 +18,12 @@ public static class WireContract
     /// </summary>
     public const double MaxNoiseScale = 1e30;
 
+    /// <summary>
+    /// Largest magnitude of a number in an ask or outcome, whatever its unit: far beyond any price, power or angle of a network, and
+    /// small enough that products of a few such numbers stay finite.
+    /// </summary>
+    public const double MaxMagnitude = 1e18;
+
     /// <summary>Longest text that a peer may send, characters.</summary>
     public const int MaxText = 500;
 

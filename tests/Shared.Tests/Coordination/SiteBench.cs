@@ -15,7 +15,7 @@ internal sealed record SiteDone(ChargeRow[] Charges, SetPoint[] SetPoints, SiteR
 /// <summary>A site core driven by hand, with a ledger that outlives it.</summary>
 internal sealed class SiteBench : ILoadReadings
 {
-    private readonly SiteSetup _setup;
+    private SiteSetup _setup;
     private readonly double[] _loadMw;
     private readonly ulong _seed;
     private ulong _starts;
@@ -23,7 +23,9 @@ internal sealed class SiteBench : ILoadReadings
 
     public SiteBench(Plan plan, string site, ulong seed = 1)
     {
-        _setup = new SetupBuilder(plan).ForSite(site);
+        // Tests ask about later cycles than the small plans have; only a campaign's allowance depends on how many there are.
+        var setup = new SetupBuilder(plan).ForSite(site);
+        _setup = plan.Privacy.Scope == PrivacyScope.Campaign ? setup : setup with { CampaignCycles = 1000 };
         _loadMw = plan.Loads[site].At(1);
         _seed = seed;
         _core = Start();
@@ -54,6 +56,13 @@ internal sealed class SiteBench : ILoadReadings
     {
         _loadMw.CopyTo(loadMw);
         return HasReading;
+    }
+
+    /// <summary>A new bundle for the same ledger: a longer campaign.</summary>
+    public void Repack(int campaignCycles)
+    {
+        _setup = _setup with { CampaignCycles = campaignCycles };
+        Restart();
     }
 
     public SiteDone Step(SiteInput input)

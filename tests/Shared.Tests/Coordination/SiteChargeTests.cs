@@ -90,11 +90,12 @@ public class SiteChargeTests
     [Fact]
     public void An_allowance_that_is_spent_refuses_by_type_and_stays_spent_across_a_restart()
     {
-        // The campaign is planned for one cycle of 40 rounds; the coordinator asks for a second and a third.
+        // A campaign of one cycle of 40 rounds is spent; a bundle for a longer one does not bring a new allowance.
         var bench = new SiteBench(SiteBench.Noisy(roundCap: 40, scope: PrivacyScope.Campaign), "s0");
         for (var round = 1; round <= 40; round++)
             Assert.Equal(round, bench.Ask(1, round).Answer.Id.Round);
         bench.End(1, 40);
+        bench.Repack(campaignCycles: 4);
         for (var cycle = 2; cycle <= 3; cycle++)
         {
             var done = bench.Ask(cycle, 1);

@@ -77,7 +77,8 @@ public sealed class BadPlanTests : IDisposable
         foreach (var command in new[] { "check", "rehearse" })
         {
             (await RunAsync(command)).AssertRefused(
-                "errors:", "grid/buses.csv:4", "grid/lines.csv:2:4", "grid/lines.csv:2:5", "grid/generators.csv:3", "loads/north.csv:2", "plan.yaml:2", "plan.yaml:3");
+                "errors:", "grid/buses.csv:4", "grid/lines.csv:2:4", "grid/lines.csv:2:5", "grid/generators.csv:3", "loads/north.csv:2",
+                    "plan.yaml:2", "plan.yaml:3");
         }
     }
 

@@ -32,7 +32,8 @@ public sealed class CommandLineTests : IDisposable
     {
         var (code, output, _) = await Checkout.RunRigAsync(Cancel, "--help");
         Assert.Equal(0, code);
-        foreach (var word in new[] { "rehearse", "check", "optimum", "new", "pack", "keys", "Exit codes: 0 passed, 1 a limit failed, 2", "3", "no certification" })
+        foreach (var word in new[] { "rehearse", "check", "optimum", "new", "pack", "keys", "Exit codes: 0 passed, 1 a limit failed, 2", "3",
+            "no certification" })
             Assert.Contains(word, output, StringComparison.Ordinal);
         (code, output, _) = await Checkout.RunRigAsync(Cancel, "keys");
         Assert.Equal(0, code);
@@ -98,7 +99,8 @@ public sealed class CommandLineTests : IDisposable
         Assert.Equal(13.5, json.RootElement.GetProperty("unserved_mw").GetDouble(), 1e-4);
         Assert.Equal(JsonValueKind.Null, json.RootElement.GetProperty("cost_per_hour").ValueKind);
         foreach (var command in new[] { "optimum", "check", "rehearse" })
-            (await RigConsole.RunAsync([command, plan.Folder, .. command == "rehearse" ? new[] { "--runs", _folder.File("runs") } : []])).AssertRefused("13.5", "MW", "cannot be served");
+            (await RigConsole.RunAsync([command, plan.Folder, .. command == "rehearse" ? new[] { "--runs", _folder.File("runs") } : []]))
+                .AssertRefused("13.5", "MW", "cannot be served");
     }
 
     [Fact]

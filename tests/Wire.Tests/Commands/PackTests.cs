@@ -50,9 +50,11 @@ public sealed class PackTests : IDisposable
 
         var binaries = await Checkout.BinariesAsync();
         await using var coordinator = LineProcess.Start("coordinator", binaries.CoordinatorPath,
-            ["--bundle", BundleWriter.CoordinatorFolder(_folder.File("bundles")), "--state", _folder.File("coordinator"), "--listen", address], binaries.Environment);
+            ["--bundle", BundleWriter.CoordinatorFolder(_folder.File("bundles")), "--state", _folder.File("coordinator"), "--listen", address],
+                binaries.Environment);
         var agents = sites.Select(site => LineProcess.Start(site, binaries.AgentPath,
-            ["--bundle", BundleWriter.SiteFolder(_folder.File("bundles"), site), "--state", _folder.File("state-" + site), "--coordinator", address], binaries.Environment)).ToList();
+            ["--bundle", BundleWriter.SiteFolder(_folder.File("bundles"), site), "--state", _folder.File("state-" + site), "--coordinator", address],
+                binaries.Environment)).ToList();
 
         Assert.Equal(0, await coordinator.EndAsync(Cancel));
         foreach (var agent in agents)

@@ -17,7 +17,8 @@ public sealed class DemoRehearsalTests(DemoRun run) : IClassFixture<DemoRun>
 
         // With real noise a limit may be missed once in a while; that the exit code says so is what is tested.
         Assert.Equal(root.GetProperty("passed").GetBoolean() ? 0 : 1, run.ExitCode);
-        Assert.Equal(root.GetProperty("passed").GetBoolean(), root.GetProperty("limits").EnumerateArray().All(limit => limit.GetProperty("passed").GetBoolean()));
+        Assert.Equal(root.GetProperty("passed").GetBoolean(), root.GetProperty("limits").EnumerateArray().All(limit => limit.GetProperty("passed")
+            .GetBoolean()));
         Assert.Equal(3, root.GetProperty("cycles").GetArrayLength());
         Assert.All(root.GetProperty("cycles").EnumerateArray(), cycle => Assert.True(cycle.GetProperty("settled").GetBoolean(), run.Errors));
     }
@@ -100,8 +101,10 @@ public sealed class DemoRehearsalTests(DemoRun run) : IClassFixture<DemoRun>
     {
         // Every ask names one row a component that moves; what was answered beyond that are the components that are heard once a cycle.
         Assert.True(RunFiles.Count(run.Record, "SELECT COUNT(*) FROM rounds") >= 3);
-        Assert.Equal(0, RunFiles.Count(run.Record, "SELECT COUNT(*) FROM (SELECT cycle, round, site, component FROM answers GROUP BY 1, 2, 3, 4 HAVING COUNT(*) > 1)"));
-        Assert.Equal(0, RunFiles.Count(run.Record, "SELECT COUNT(*) FROM asks a LEFT JOIN answers b USING (cycle, round, site, component) WHERE b.steps IS NULL"));
+        Assert.Equal(0, RunFiles.Count(run.Record, "SELECT COUNT(*) FROM (SELECT cycle, round, site, component "
+            + "FROM answers GROUP BY 1, 2, 3, 4 HAVING COUNT(*) > 1)"));
+        Assert.Equal(0, RunFiles.Count(run.Record, "SELECT COUNT(*) FROM asks a "
+            + "LEFT JOIN answers b USING (cycle, round, site, component) WHERE b.steps IS NULL"));
         Assert.Equal(
             RunFiles.Count(run.Record, "SELECT COUNT(*) FROM cycles") * RunFiles.Count(run.Record, "SELECT COUNT(*) FROM components WHERE adjustable = 0"),
             RunFiles.Count(run.Record, "SELECT COUNT(*) FROM answers a JOIN components c USING (site, component) WHERE c.adjustable = 0"));

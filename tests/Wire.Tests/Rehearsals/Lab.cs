@@ -80,6 +80,29 @@ internal sealed class Lab : IAsyncDisposable
 
     public string AgentLog(string site) => File.ReadAllText(Path.Combine(SiteState(site), "agent.jsonl"));
 
+    /// <summary>Waits until a site's agents have joined so many times in all, by what they log.</summary>
+    public async Task JoinedAsync(string site, int times)
+    {
+        Directory.CreateDirectory(SiteState(site));
+        var joined = new TaskCompletionSource(TaskCreationOptions.RunContinuationsAsynchronously);
+        using var watch = new FileSystemWatcher(SiteState(site), "agent.jsonl");
+        watch.Changed += (_, _) => Look();
+        watch.Created += (_, _) => Look();
+        watch.EnableRaisingEvents = true;
+        Look();
+        await joined.Task.WaitAsync(LineProcess.Patience, Cancel);
+
+        void Look()
+        {
+            var path = Path.Combine(SiteState(site), "agent.jsonl");
+            if (!File.Exists(path))
+                return;
+            using var reader = new StreamReader(new FileStream(path, FileMode.Open, FileAccess.Read, FileShare.ReadWrite));
+            if (reader.ReadToEnd().Split("Joined; next is cycle").Length > times)
+                joined.TrySetResult();
+        }
+    }
+
     public async ValueTask DisposeAsync()
     {
         foreach (var process in _processes)

@@ -17,7 +17,7 @@ public sealed class LedgerRefusalTests
         await lab.StartCoordinatorAsync();
         var first = lab.StartAgent("mid");
         await first.WaitForAsync(line => line.Contains("NOT veiled", StringComparison.Ordinal), Cancel);
-        await ReadyAsync(lab, "mid");
+        await lab.JoinedAsync("mid", 1);
 
         await AssertRefusedAsync(lab.StartAgent("mid"), "Another agent has this ledger open");
         Assert.False(first.Exited.IsCompleted);
@@ -110,24 +110,6 @@ public sealed class LedgerRefusalTests
         command.CommandText = "CREATE TABLE charges (something TEXT); INSERT INTO charges VALUES ('else')";
         command.ExecuteNonQuery();
         return path;
-    }
-
-    /// <summary>Waits until the agent has its ledger: it says so by joining.</summary>
-    private static async Task ReadyAsync(Lab lab, string site)
-    {
-        using var watch = new FileSystemWatcher(lab.SiteState(site), "agent.jsonl") { EnableRaisingEvents = true };
-        var joined = new TaskCompletionSource(TaskCreationOptions.RunContinuationsAsynchronously);
-        watch.Changed += (_, _) => Look();
-        Look();
-        await joined.Task.WaitAsync(LineProcess.Patience, Cancel);
-
-        void Look()
-        {
-            using var stream = new FileStream(Path.Combine(lab.SiteState(site), "agent.jsonl"), FileMode.Open, FileAccess.Read, FileShare.ReadWrite);
-            using var reader = new StreamReader(stream);
-            if (reader.ReadToEnd().Contains("Joined; next is cycle", StringComparison.Ordinal))
-                joined.TrySetResult();
-        }
     }
 
     private static async Task AssertRefusedAsync(LineProcess agent, string words)

@@ -36,7 +36,8 @@ internal sealed class LineProcess : IAsyncDisposable
 
     public string Errors => Text(true);
 
-    public static LineProcess Start(string name, string executable, IEnumerable<string> arguments, IReadOnlyDictionary<string, string?>? environment = null, string? workingFolder = null)
+    public static LineProcess Start(string name, string executable, IEnumerable<string> arguments, IReadOnlyDictionary<string,
+        string?>? environment = null, string? workingFolder = null)
     {
         var info = new ProcessStartInfo(executable, arguments)
         {
@@ -70,7 +71,13 @@ internal sealed class LineProcess : IAsyncDisposable
     }
 
     /// <summary>Waits for the end and returns the exit code.</summary>
-    public Task<int> EndAsync(CancellationToken cancel) => Exited.WaitAsync(Patience, cancel);
+    public async Task<int> EndAsync(CancellationToken cancel)
+    {
+        var ended = Exited.WaitAsync(Patience, cancel);
+        await Task.WhenAny(ended);
+        Assert.True(ended.IsCompletedSuccessfully, $"{Name} did not end. Its last words:\n{Errors}");
+        return await Exited;
+    }
 
     /// <summary>Ends the standard input, for programs that read it.</summary>
     public void CloseInput() => _process.StandardInput.Dispose();

@@ -2,6 +2,10 @@ using System.Globalization;
 using System.Text.Json;
 using Halfvoice.Coordination;
 using Halfvoice.Plans;
+using Halfvoice.Rig.Authority;
+using Halfvoice.Rig.Runs;
+using Halfvoice.Tests.Wire;
+using V1 = Halfvoice.Wire.V1;
 
 namespace Halfvoice.Tests.Rehearsals;
 
@@ -39,7 +43,8 @@ public sealed class RestartTests
 
         // At each kill at most one asked round can have been left open; every site was asked for it once and never again.
         Assert.InRange(journal.Rounds().Count(round => round.Close is null), 0, 3);
-        Assert.DoesNotContain(journal.Events(), e => e.Reason is nameof(RefusalReason.AskChanged) or nameof(RefusalReason.Forfeited) or nameof(RefusalReason.BudgetSpent));
+        Assert.DoesNotContain(journal.Events(), e => e.Reason is nameof(RefusalReason.AskChanged)
+            or nameof(RefusalReason.Forfeited) or nameof(RefusalReason.BudgetSpent));
         Assert.Equal(3, Count(lab.CoordinatorLog(), "Resuming after"));
         foreach (var site in lab.Plan.Network.Sites)
         {
@@ -50,7 +55,7 @@ public sealed class RestartTests
     }
 
     [Fact]
-    public async Task An_agent_that_is_killed_forfeits_what_it_had_reserved_and_takes_part_again()
+    public async Task An_agent_that_is_killed_at_any_moment_takes_part_again_and_spends_no_more_than_it_may()
     {
         const string site = "mill";
         await using var lab = await Lab.CreateAsync(Checkout.Load(Checkout.Demo) with { Cycles = Cycles });
@@ -71,12 +76,57 @@ public sealed class RestartTests
         Assert.Equal(2, journal.Events().Count(e => e.Kind == "joined" && e.Site == site));
         Assert.Contains(journal.Rounds(), round => round.Cycle == Cycles && round.Close!.Answers.Any(answer => answer.Site == index));
         Assert.Equal("Settled", journal.Cycles()[^1].End);
-        Assert.Contains("Forfeited", lab.AgentLog(site), StringComparison.Ordinal);
-        Assert.Equal(1, RunFiles.Count(lab.LedgerOf(site), "SELECT COUNT(*) FROM charges WHERE state = 'Forfeited'"));
         Assert.Equal(0, RunFiles.Count(lab.LedgerOf(site), "SELECT COUNT(*) FROM charges WHERE state = 'Open'"));
-        AssertNoRoundAfterForfeit(lab, site, journal.Rounds(), index);
         foreach (var name in lab.Plan.Network.Sites)
             AssertWithinAllowance(lab, name);
+    }
+
+    [Fact]
+    public async Task What_a_killed_agent_had_reserved_is_forfeited_and_never_answered()
+    {
+        const string held = "mid";
+        const string site = "low";
+        var plan = Checkout.Load(Checkout.Sample);
+        plan = plan with
+        {
+            Cycles = 3,
+            Privacy = new PrivacySettings { Mechanism = MechanismKind.PerRound, Epsilon = 100 },
+            Rounds = plan.Rounds with { Deadline = TimeSpan.FromMinutes(10), Quorum = 0.6, HoldRounds = 1000 },
+            Stop = plan.Stop with { RoundCap = 60 },
+        };
+        await using var lab = await Lab.CreateAsync(plan);
+        var coordinator = await lab.StartCoordinatorAsync();
+        var agents = lab.StartAgents(held);
+        using var identity = lab.Authority.Issue(new IdentityRequest(IdentityRole.Site, held));
+        using var client = new SiteClient(lab.Port, identity.Certificate);
+        var player = new HonestPart(lab, held);
+        var enrol = new V1.Enrol();
+        player.Describe(enrol);
+        await client.SendAsync(new V1.FromSite { Header = client.Header(), Enrol = enrol });
+        var ask = await client.ReadAsync(V1.FromCoordinator.BodyOneofCase.Ask);
+        while (ask.Header.Round < 3)
+        {
+            await player.AnswerAsync(client, ask);
+            ask = await client.ReadAsync(V1.FromCoordinator.BodyOneofCase.Ask);
+        }
+
+        // Round 3 is asked, so the agent has answered round 2 from its reserved block; our answer is held back until it is back.
+        agents[site].Kill();
+        Assert.Equal(137, await agents[site].EndAsync(Cancel));
+        agents[site] = lab.StartAgent(site);
+        await lab.JoinedAsync(site, 2);
+        await player.AnswerAsync(client, ask);
+        await player.PlayOnAsync(client);
+
+        Assert.Equal(0, await coordinator.EndAsync(Cancel));
+        foreach (var agent in agents.Values)
+            Assert.True(await agent.EndAsync(Cancel) == 0, agent.Errors);
+        using var journal = lab.OpenJournal();
+        var index = plan.Network.Sites.ToList().IndexOf(site);
+        Assert.Contains("Forfeited", lab.AgentLog(site), StringComparison.Ordinal);
+        AssertNoRoundAfterForfeit(lab, site, journal.Rounds(), index);
+        Assert.Contains(journal.Rounds(), round => round.Cycle == 3 && round.Close!.Answers.Any(answer => answer.Site == index));
+        AssertWithinAllowance(lab, site);
     }
 
     [Fact]
@@ -119,17 +169,19 @@ public sealed class RestartTests
         Assert.All(spent, row => Assert.InRange(Convert.ToInt64(row[1], CultureInfo.InvariantCulture), 0, allowed));
     }
 
-    /// <summary>A forfeited round may have been answered before the kill; after the second joining it is never answered.</summary>
-    private static void AssertNoRoundAfterForfeit(Lab lab, string site, IReadOnlyList<Halfvoice.Rig.Runs.JournalRound> rounds, int index)
+    /// <summary>A forfeited round may have been answered before the kill, in rounds 1 to 3; after the second joining none of the block is.</summary>
+    private static void AssertNoRoundAfterForfeit(Lab lab, string site, IReadOnlyList<JournalRound> rounds, int index)
     {
         var row = Assert.Single(RunFiles.Query(lab.LedgerOf(site), "SELECT cycle, first_round, answers FROM charges WHERE state = 'Forfeited'"));
-        var (cycle, last) = (Convert.ToInt32(row[0], CultureInfo.InvariantCulture), Convert.ToInt32(row[1], CultureInfo.InvariantCulture) + Convert.ToInt32(row[2], CultureInfo.InvariantCulture) - 1);
-        var charged = RunFiles.Query(lab.LedgerOf(site), "SELECT cycle, first_round, answers FROM charges WHERE state <> 'Refused'")
-            .SelectMany(r => Enumerable.Range(Convert.ToInt32(r[1], CultureInfo.InvariantCulture), Convert.ToInt32(r[2], CultureInfo.InvariantCulture))
-                .Select(round => (Convert.ToInt32(r[0], CultureInfo.InvariantCulture), round))).ToList();
-        Assert.Equal(charged.Count, charged.Distinct().Count());
+        Assert.Equal([1L, 1L, (long)SiteCore.FirstBlock], row);
         Assert.All(
-            rounds.Where(round => round.Cycle == cycle && round.Round > last && round.Close is not null),
+            rounds.Where(round => round.Cycle == 1 && round.Round is > 3 and <= SiteCore.FirstBlock),
             round => Assert.DoesNotContain(round.Close!.Answers, answer => answer.Site == index));
+        Assert.Contains(rounds, round => round.Cycle == 1 && round.Round > 3);
+        var charged = RunFiles.Query(lab.LedgerOf(site), "SELECT cycle, first_round, answers FROM charges WHERE state <> 'Refused'")
+            .SelectMany(r => Enumerable.Range(Whole(r[1]), Whole(r[2])).Select(round => (Whole(r[0]), round))).ToList();
+        Assert.Equal(charged.Count, charged.Distinct().Count());
+
+        static int Whole(object value) => Convert.ToInt32(value, CultureInfo.InvariantCulture);
     }
 }

@@ -36,7 +36,8 @@ public sealed class SampleRehearsalTests : IDisposable
         var cycles = dispatch.Run();
 
         using var verdict = JsonDocument.Parse(output);
-        Assert.Equal(cycles.Select(cycle => cycle.Rounds), verdict.RootElement.GetProperty("cycles").EnumerateArray().Select(cycle => cycle.GetProperty("rounds").GetInt32()));
+        Assert.Equal(cycles.Select(cycle => cycle.Rounds), verdict.RootElement.GetProperty("cycles").EnumerateArray().Select(cycle => cycle
+            .GetProperty("rounds").GetInt32()));
         Assert.All(verdict.RootElement.GetProperty("cycles").EnumerateArray(), cycle => Assert.Empty(cycle.GetProperty("epsilon_by_site").EnumerateObject()));
         AssertSameAnswers(run, closed);
         AssertSameSetPoints(run, plan, dispatch, cycles);

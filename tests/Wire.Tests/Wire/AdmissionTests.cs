@@ -102,7 +102,8 @@ public sealed class AdmissionTests
 
         var agent = lab.StartAgent("mid", bundle: other.SiteBundle("mid"));
 
-        await agent.WaitForAsync(line => line.Contains("is not this plan's coordinator", StringComparison.Ordinal) && line.Contains("UnknownAuthority", StringComparison.Ordinal), Cancel);
+        await agent.WaitForAsync(line => line.Contains("is not this plan's coordinator", StringComparison.Ordinal) && line
+            .Contains("UnknownAuthority", StringComparison.Ordinal), Cancel);
     }
 
     [Fact]
@@ -171,7 +172,8 @@ public sealed class AdmissionTests
         var failure = await Assert.ThrowsAsync<RpcException>(client.ReadAsync);
         Assert.Contains(failure.StatusCode, new[] { StatusCode.Unavailable, StatusCode.Internal });
         if (reason is not null)
-            await coordinator.WaitForAsync(line => line.Contains("Refused a connection", StringComparison.Ordinal) && line.Contains(reason, StringComparison.Ordinal), Cancel);
+            await coordinator.WaitForAsync(line => line.Contains("Refused a connection", StringComparison.Ordinal) && line.Contains(reason,
+                StringComparison.Ordinal), Cancel);
     }
 
     /// <summary>The connection holds, but the call is refused with a status, and the coordinator says why.</summary>
@@ -180,7 +182,8 @@ public sealed class AdmissionTests
         using var client = new SiteClient(lab.Port, certificate);
         var failure = await Assert.ThrowsAsync<RpcException>(client.ReadAsync);
         Assert.Equal(StatusCode.PermissionDenied, failure.StatusCode);
-        await coordinator.WaitForAsync(line => line.Contains("Refused a call", StringComparison.Ordinal) && line.Contains(reason, StringComparison.Ordinal), Cancel);
+        await coordinator.WaitForAsync(line => line.Contains("Refused a call", StringComparison.Ordinal) && line.Contains(reason,
+            StringComparison.Ordinal), Cancel);
     }
 
     /// <summary>With the last site's agent everything runs to its end as if nobody had tried anything.</summary>

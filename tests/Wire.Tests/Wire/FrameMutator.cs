@@ -9,7 +9,8 @@ internal sealed class FrameMutator(int seed)
 {
     private static readonly double[] _doubles =
     [
-        0, -0.0, 1, -1, 1e-300, -1e-300, double.Epsilon, 1e9, -1e9, 1e150, -1e150, double.MaxValue, double.MinValue, double.NaN, double.PositiveInfinity, double.NegativeInfinity,
+        0, -0.0, 1, -1, 1e-300, -1e-300, double.Epsilon, 1e9, -1e9, 1e150, -1e150, double.MaxValue, double.MinValue, double.NaN,
+            double.PositiveInfinity, double.NegativeInfinity,
     ];
 
     private static readonly long[] _steps = [0, 1, -1, 1L << 20, -(1L << 20), 1L << 40, 1L << 53, long.MaxValue, long.MinValue, long.MaxValue - 1];

@@ -2,8 +2,6 @@ using Google.Protobuf;
 using Google.Protobuf.Collections;
 using Grpc.Core;
 using Halfvoice.Coordination;
-using Halfvoice.Plans;
-using Halfvoice.Privacy;
 using Halfvoice.Rig.Authority;
 using Halfvoice.Tests.Rehearsals;
 using V1 = Halfvoice.Wire.V1;
@@ -23,7 +21,8 @@ public sealed class HostileSiteTests
         ("a skipped sequence number", "OutOfOrder", (c, lab) => c.SendAsync(Enrol(c, lab, header: h => h.Sequence = 2))),
         ("a sequence number of zero", "OutOfOrder", (c, lab) => c.SendAsync(Enrol(c, lab, header: h => h.Sequence = 0))),
         ("a cycle beyond all plans", "OutOfRange", (c, lab) => c.SendAsync(Enrol(c, lab, header: h => h.Cycle = uint.MaxValue))),
-        ("an answer before enrolling", "OutOfOrder", (c, _) => c.SendAsync(new V1.FromSite { Header = c.Header(1, 1), Answer = new V1.Answer { Everything = true, Steps = { 1 } } })),
+        ("an answer before enrolling", "OutOfOrder", (c, _) => c.SendAsync(new V1.FromSite { Header = c.Header(1, 1),
+            Answer = new V1.Answer { Everything = true, Steps = { 1 } } })),
         ("a refusal before enrolling", "OutOfOrder", (c, _) => c.SendAsync(new V1.FromSite { Header = c.Header(1, 1), Refusal = new V1.Refusal() })),
         ("a NaN noise scale", "OutOfRange", (c, lab) => c.SendAsync(Enrol(c, lab, e => e.NoiseScale = double.NaN))),
         ("an infinite noise scale", "OutOfRange", (c, lab) => c.SendAsync(Enrol(c, lab, e => e.NoiseScale = double.PositiveInfinity))),
@@ -99,13 +98,7 @@ public sealed class HostileSiteTests
         // The right answer counts, its repetition does not, and the site plays on honestly to the end.
         await client.SendAsync(new V1.FromSite { Header = client.Header(1, 1), Answer = right });
         await client.SendAsync(new V1.FromSite { Header = client.Header(1, 1), Answer = right });
-        while (await client.ReadAsync() is { } message && message.BodyCase != V1.FromCoordinator.BodyOneofCase.Farewell)
-        {
-            if (message.BodyCase == V1.FromCoordinator.BodyOneofCase.Ask)
-                await client.SendAsync(new V1.FromSite { Header = client.Header((int)message.Header.Cycle, (int)message.Header.Round), Answer = player.AnswerTo(message) });
-        }
-
-        await client.CompleteAsync();
+        await player.PlayOnAsync(client);
         await AssertSettledAsync(lab, coordinator, agents.Values);
         AssertFirstRound(lab, right);
     }
@@ -199,44 +192,5 @@ public sealed class HostileSiteTests
         var copy = answer.Clone();
         change(copy.Steps);
         return copy;
-    }
-
-    /// <summary>What the site's own agent would say, from the same core.</summary>
-    private sealed class HonestPart
-    {
-        private readonly SiteCore _core;
-
-        public HonestPart(Lab lab, string site) => _core = new SiteCore(
-            lab.Setups.ForSite(site), new Readings(lab.Plan.Loads[site]), new NoNoise(), [], out _);
-
-        public void Describe(V1.Enrol enrol)
-        {
-            var own = _core.Enrolment();
-            (enrol.LatticeExponent, enrol.NoiseScale, enrol.EpsilonPerAnswer) = (own.LatticeExponent, own.NoiseScale, own.EpsilonPerAnswer);
-        }
-
-        public V1.Answer AnswerTo(V1.FromCoordinator message)
-        {
-            var id = new RoundId((int)message.Header.Cycle, (int)message.Header.Round);
-            var step = _core.Step(new SiteInput.Asked(new Ask(id, message.Ask.Everything, [.. message.Ask.Consensus], [.. message.Ask.Dual])), TimeSpan.FromSeconds(1));
-            var answer = Assert.IsType<SiteReply.Answered>(step.Reply).Answer;
-            return new V1.Answer { Everything = answer.Everything, Steps = { answer.Steps } };
-        }
-    }
-
-    private sealed class Readings(LoadSeries series) : ILoadReadings
-    {
-        public bool TryRead(int cycle, Span<double> loadMw)
-        {
-            series.At(cycle).CopyTo(loadMw);
-            return true;
-        }
-    }
-
-    private sealed class NoNoise : INoiseSource
-    {
-        public bool IsPrivate => false;
-
-        public void Fill(Span<byte> bytes) => throw new InvalidOperationException("Mechanism none draws no noise.");
     }
 }

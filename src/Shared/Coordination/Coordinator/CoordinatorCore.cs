@@ -114,6 +114,12 @@ public sealed class CoordinatorCore
             return;
         }
 
+        if (!seat.IsPlausible(enrol))
+        {
+            Refuse(site, new Refusal(_id, RefusalReason.OutOfRange, "The declared noise or lattice is far beyond the public bounds of the site's values."));
+            return;
+        }
+
         seat.Join(enrol);
         for (var k = _scheme.Map.Start(site); k < _scheme.Map.Start(site) + _scheme.Map.CountOf(site); k++)
             _scheme.NoiseScale[k] = enrol.NoiseScale;

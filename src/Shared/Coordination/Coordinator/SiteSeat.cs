@@ -3,6 +3,9 @@ namespace Halfvoice.Coordination;
 /// <summary>What the coordinator knows of a site's presence.</summary>
 internal sealed class SiteSeat
 {
+    // A plan may ask for noise above the bound (a tiny epsilon); a thousand times it is no plan.
+    private const double MostTimesBound = 1000;
+
     private readonly CoordinatorSite _site;
     private double _step;
     private long _boundSteps;
@@ -26,17 +29,30 @@ internal sealed class SiteSeat
     /// <summary>Rounds in a row for which an old answer has stood in.</summary>
     public int Age { get; set; }
 
+    /// <summary>
+    /// Whether what a site declares can be true: noise and lattice steps of many times the public bound would say nothing, and they
+    /// would lift the noise floor or the bound on answers until anything passes.
+    /// </summary>
+    public bool IsPlausible(Enrol enrol)
+    {
+        // A site without components has nothing to declare about.
+        var most = MostTimesBound * Bound;
+        return _site.Components.Count == 0 || (enrol.NoiseScale <= most && Math.ScaleB(1, enrol.LatticeExponent) <= most);
+    }
+
     public void Join(Enrol enrol)
     {
         Joined = true;
         AnsweredThrough = enrol.AnsweredThrough;
         _step = Math.ScaleB(1, enrol.LatticeExponent);
-        var bound = _site.Components.Count == 0 ? 0 : _site.Components.Max(part => part.Bound);
+        var bound = Bound;
 
         // Noise goes past the bound on values; a public margin of a hundred scales is passed once in 10^43 answers.
         var steps = Math.Ceiling((bound + (100 * enrol.NoiseScale)) / _step);
         _boundSteps = steps < long.MaxValue ? (long)steps : long.MaxValue;
     }
+
+    private double Bound => _site.Components.Count == 0 ? 0 : _site.Components.Max(part => part.Bound);
 
     /// <summary>What the site answered before it left stays an answer of its round.</summary>
     public void Leave() => Joined = false;

@@ -133,6 +133,13 @@ public sealed class SiteCore
             return;
         }
 
+        if (ask.Id.Cycle > _setup.CampaignCycles)
+        {
+            // The allowance is counted by cycles, so cycles that the plan does not have must not open new ones.
+            Refuse(ask.Id, RefusalReason.OutOfRange, $"The plan has {_setup.CampaignCycles} cycles.");
+            return;
+        }
+
         var digest = DigestOf(ask);
         switch (_memory.Look(ask.Id.Cycle, ask.Id.Round, digest))
         {
