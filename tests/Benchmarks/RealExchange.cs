@@ -8,7 +8,7 @@ namespace Halfvoice.Benchmarks;
 
 /// <summary>What the product's own exchange measured.</summary>
 /// <param name="Sites">Agent processes.</param>
-/// <param name="Rounds">Rounds of all cycles together.</param>
+/// <param name="Rounds">Rounds of all cycles but the first, which warms up.</param>
 /// <param name="RoundsPerSecond">Rounds over the cycles' time.</param>
 /// <param name="ReadySeconds">From the first agent's start until all had joined.</param>
 /// <param name="ResidentMb">Largest resident memory of an agent that was seen, MB; NaN where the system does not say.</param>
@@ -38,9 +38,11 @@ public static class RealExchange
             var memory = WatchMemoryAsync(Path.GetFileName(binaries.AgentPath), done.Token);
             var verdict = await rehearsal.RunAsync(new Dictionary<string, string>(), CancellationToken.None).ConfigureAwait(false);
             await done.CancelAsync().ConfigureAwait(false);
-            var total = verdict.Cycles.Sum(cycle => cycle.Rounds);
+            // The first cycle warms up, as the bare exchange does before it counts.
+            var counted = verdict.Cycles.Skip(1).ToArray();
+            var total = counted.Sum(cycle => cycle.Rounds);
             return new RealExchangeResult(
-                sites, total, total / verdict.Cycles.Sum(cycle => cycle.Seconds), rehearsal.ReadyAfter?.TotalSeconds ?? double.NaN,
+                sites, total, total / counted.Sum(cycle => cycle.Seconds), rehearsal.ReadyAfter?.TotalSeconds ?? double.NaN,
                 await memory.ConfigureAwait(false));
         }
         finally
@@ -56,7 +58,7 @@ public static class RealExchange
         var plants = bare.Select(bus => new Generator($"spare-{bus}", bus, 0, 5, 0.1, 60)).ToArray();
         return plan with
         {
-            Cycles = 1,
+            Cycles = 4,
             Network = new Network(network.BaseMva, network.Buses, network.Lines, [.. network.Generators, .. plants]),
             Stop = plan.Stop with { RoundCap = rounds, MismatchFraction = 1e-15, PriceMovePerMwh = 1e-15 },
             Privacy = new PrivacySettings { AdjacencyMw = 0.001, Epsilon = 1000, Scope = PrivacyScope.Round, Stated = true },
