@@ -44,14 +44,14 @@ mirror="${HALFVOICE_DEBIAN_MIRROR:-$(mirror_of_apt)}"
 scratch="$(mktemp -d)"
 trap 'rm -rf --one-file-system "$scratch"' EXIT
 
-if ! debootstrap --variant=minbase --include=libssl3,ca-certificates "$suite" "$scratch/root" "$mirror" >"$scratch/log" 2>&1; then
+if ! debootstrap --variant=minbase --include=libssl3,ca-certificates "$suite" "$scratch/rootfs" "$mirror" >"$scratch/log" 2>&1; then
     tail -n 20 "$scratch/log" >&2
     fail 'debootstrap failed; its last lines are above'
 fi
 
 # Package caches, documentation and the mirror's address have no use in a running container.
-rm -rf "$scratch"/root/var/cache/apt/* "$scratch"/root/var/lib/apt/lists/* "$scratch"/root/var/log/* \
-    "$scratch"/root/usr/share/{doc,man,info,locale,lintian} "$scratch"/root/etc/apt/sources.list
-tar --create --directory "$scratch/root" --numeric-owner --exclude=./dev/* . |
+rm -rf "$scratch"/rootfs/var/cache/apt/* "$scratch"/rootfs/var/lib/apt/lists/* "$scratch"/rootfs/var/log/* \
+    "$scratch"/rootfs/usr/share/{doc,man,info,locale,lintian} "$scratch"/rootfs/etc/apt/sources.list
+tar --create --directory "$scratch/rootfs" --numeric-owner --exclude=./dev/* . |
     docker import --message 'Debian bookworm, minimal, with libssl3' - "$image" >/dev/null
 printf 'base-image: made %s (%s)\n' "$image" "$(docker image inspect --format '{{.Size}}' "$image" | numfmt --to=iec)"

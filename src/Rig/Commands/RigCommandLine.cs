@@ -9,7 +9,7 @@ public static class RigCommandLine
     private const string About = """
         Halfvoice rehearses a coordinated dispatch before it goes live: every site solves its own part, veils its answer, and a coordinator reconciles them.
         A rehearsal is no operating instruction and no certification; protection and local limits stay independent of it.
-        Exit codes: 0 passed, 1 a limit failed, 2 the plan or the command line is wrong, 3 the command itself broke.
+        Exit codes: 0 passed, 1 a limit failed, 2 the plan or the command line is wrong, 3 the command itself broke or was stopped.
         """;
 
     /// <summary>Runs one command and returns its exit code; no failure ends in a stack trace.</summary>
