@@ -6,6 +6,7 @@ namespace Halfvoice.Coordinator;
 /// <summary>
 /// Feeds the coordinator core, one input at a time under one lock, and does what it says in its order: store, then send.
 /// Inputs come straight from the threads that read the streams, so that an answer needs no queue between them and the core.
+/// What is to be sent is put in order under the lock and written after it.
 /// Decisions about rounds, quorum and budget are the core's; this class only translates and keeps.
 /// </summary>
 internal sealed class DispatchHost : IDisposable
@@ -20,6 +21,7 @@ internal sealed class DispatchHost : IDisposable
     private readonly ITimer _timer;
     private readonly Serilog.ILogger _log;
     private readonly Lock _gate = new();
+    private readonly List<SiteStream> _toFlush = [];
     private readonly TaskCompletionSource _done = new(TaskCreationOptions.RunContinuationsAsynchronously);
     private TimeSpan? _armed;
     private TimeSpan _nextPulse;
@@ -27,6 +29,7 @@ internal sealed class DispatchHost : IDisposable
     private long _up;
     private long _takenDown;
     private long _takenUp;
+    private bool _finished;
 
     public DispatchHost(CoordinatorSetup setup, CoordinatorCore core, Journal journal, ProgressLines progress, TimeProvider time, Serilog.ILogger log)
     {
@@ -74,7 +77,7 @@ internal sealed class DispatchHost : IDisposable
         // Refused: the 'no' belongs to the new stream, never to one that sits in the seat already.
         _journal.Store(step.Store, TakeBytes);
         foreach (var (_, message) in step.Send)
-            stream.TrySend(message);
+            Send(stream, message);
         stream.Complete();
         if (!taken)
             _seats[stream.Site] = null;
@@ -108,7 +111,7 @@ internal sealed class DispatchHost : IDisposable
     {
         _journal.Store([new JournalEntry.Refused(stream.Site, false, refusal)], TakeBytes);
         _log.Warning("Refused a message of {Site}: {Reason}", stream.Name, refusal.Reason);
-        stream.TrySend(new CoordinatorMessage.Refused(refusal));
+        Send(stream, new CoordinatorMessage.Refused(refusal));
         stream.Complete();
     });
 
@@ -127,14 +130,15 @@ internal sealed class DispatchHost : IDisposable
     /// <summary>One at a time; nothing after the end; and whatever fails ends the coordinator instead of vanishing in a stream's task.</summary>
     private void Guard(Action action)
     {
+        SiteStream[] streams;
         lock (_gate)
         {
-            if (_done.Task.IsCompleted)
+            if (_finished || _done.Task.IsCompleted)
                 return;
             try
             {
                 action();
-                if (!_done.Task.IsCompleted)
+                if (!_finished)
                     Arm();
             }
 #pragma warning disable CA1031 // It is not swallowed: the coordinator's main task rethrows it.
@@ -143,7 +147,23 @@ internal sealed class DispatchHost : IDisposable
             {
                 _done.TrySetException(failure);
             }
+
+            streams = [.. _toFlush];
+            _toFlush.Clear();
         }
+
+        foreach (var stream in streams)
+            stream.Flush();
+        if (_finished)
+            _done.TrySetResult();
+    }
+
+    private void Send(SiteStream stream, CoordinatorMessage message)
+    {
+        if (stream.TrySend(message))
+            _toFlush.Add(stream);
+        else
+            stream.CutOff();
     }
 
     private void Do(CoordinatorStep step)
@@ -151,8 +171,8 @@ internal sealed class DispatchHost : IDisposable
         _journal.Store(step.Store, TakeBytes);
         foreach (var (site, message) in step.Send)
         {
-            if (_seats[site] is { } stream && !stream.TrySend(message))
-                stream.CutOff();
+            if (_seats[site] is { } stream)
+                Send(stream, message);
         }
 
         foreach (var news in step.News)
@@ -161,7 +181,7 @@ internal sealed class DispatchHost : IDisposable
             return;
         foreach (var seat in _seats)
             seat?.Complete();
-        _done.TrySetResult();
+        _finished = true;
     }
 
     /// <summary>Bytes on the wire since this was last asked.</summary>
@@ -186,7 +206,11 @@ internal sealed class DispatchHost : IDisposable
         _nextPulse = Now + TimeSpan.FromSeconds(WireContract.PulseSeconds);
         foreach (var seat in _seats)
         {
-            if (seat is not null && !seat.TrySendPulse())
+            if (seat is null)
+                continue;
+            if (seat.TrySendPulse())
+                _toFlush.Add(seat);
+            else
                 seat.CutOff();
         }
     }

@@ -7,8 +7,9 @@ using V1 = Halfvoice.Wire.V1;
 namespace Halfvoice.Coordinator;
 
 /// <summary>
-/// One site's live stream: what is sent to it, in order, and its byte counts. A message is handed to gRPC at once when
-/// nothing is under way, so that a round needs no extra hop between threads; otherwise it waits in a short queue.
+/// One site's live stream: what is sent to it, in order, and its byte counts. The host puts messages in order under its lock
+/// and flushes after it has let go, so that writing holds up nobody who brings an answer, and a round needs no extra hop
+/// between threads.
 /// </summary>
 internal sealed class SiteStream
 {
@@ -53,10 +54,10 @@ internal sealed class SiteStream
 
     public long BytesUp => Interlocked.Read(ref _bytesUp);
 
-    /// <summary>Sends a message in its turn; false where the site has stopped reading and must be cut off. Called under the host's lock only.</summary>
+    /// <summary>Puts a message in its place; false where the site has stopped reading and must be cut off. Called under the host's lock only.</summary>
     public bool TrySend(CoordinatorMessage message) => TrySend(Wire.Write(message));
 
-    /// <summary>Sends a sign of life. Called under the host's lock only.</summary>
+    /// <summary>Puts a sign of life in its place. Called under the host's lock only.</summary>
     public bool TrySendPulse() => TrySend(Wire.WritePulse());
 
     public void CountUp(IMessage message) => Interlocked.Add(ref _bytesUp, message.CalculateSize() + FrameBytes);
@@ -74,9 +75,23 @@ internal sealed class SiteStream
         lock (_gate)
         {
             _complete = true;
-            if (!_writing)
+            if (!_writing && _waiting.Count == 0)
                 _sent.TrySetResult();
         }
+    }
+
+    /// <summary>Starts writing what waits, unless that is under way already.</summary>
+    public void Flush()
+    {
+        V1.FromCoordinator? first;
+        lock (_gate)
+        {
+            if (_writing || !_waiting.TryDequeue(out first))
+                return;
+            _writing = true;
+        }
+
+        Write(first);
     }
 
     private bool TrySend(V1.FromCoordinator message)
@@ -85,20 +100,12 @@ internal sealed class SiteStream
         {
             if (_complete)
                 return true;
-            if (_writing && _waiting.Count >= QueueBound)
+            if (_waiting.Count >= QueueBound)
                 return false;
             Interlocked.Add(ref _bytesDown, message.CalculateSize() + FrameBytes);
-            if (_writing)
-            {
-                _waiting.Enqueue(message);
-                return true;
-            }
-
-            _writing = true;
+            _waiting.Enqueue(message);
+            return true;
         }
-
-        Write(message);
-        return true;
     }
 
     /// <summary>Writes a message and whatever waits behind it; goes on in the background where the connection makes us wait.</summary>

@@ -72,7 +72,7 @@ public static class RealExchange
         {
             while (true)
             {
-                await Task.Delay(TimeSpan.FromMilliseconds(250), done).ConfigureAwait(false);
+                await Task.Delay(TimeSpan.FromSeconds(1), done).ConfigureAwait(false);
                 foreach (var process in System.Diagnostics.Process.GetProcessesByName(agentName))
                 {
                     using (process)
