@@ -44,7 +44,7 @@ internal static class CoordinatorProgram
             log.Fatal("Cannot start: {Problem}", wrong.Message);
             return ExitCodes.WrongSetup;
         }
-        catch (Exception broken) when (broken is IOException or SocketException or SqliteException)
+        catch (Exception broken) when (broken is IOException or SocketException or SqliteException or InvalidOperationException or ArgumentException)
         {
             log.Fatal("Broken off: {Problem}", broken.Message);
             return ExitCodes.Broken;

@@ -80,6 +80,9 @@ public sealed record PlanPreview
 
     private const int MostOptima = 24;
 
+    /// <summary>Noise on one answer above this share of the reference load drowns the dispatch.</summary>
+    private const double LargeNoiseFraction = 0.02;
+
     /// <summary>Everything that deserves a second look.</summary>
     public IEnumerable<string> Warnings(Plan plan)
     {
@@ -111,6 +114,14 @@ public sealed record PlanPreview
             yield return "mechanism none: answers are NOT veiled; a listener recovers every load from them";
         foreach (var (sites, derivation) in Privacy)
         {
+            if (derivation.Unit == "MW" && derivation.Calibration.Scale > LargeNoiseFraction * ReferenceLoadMw)
+            {
+                yield return FormattableString.Invariant(
+                    $"the noise on one answer of {Names(sites)} has a scale of {derivation.Calibration.Scale:0.##} MW, ")
+                    + FormattableString.Invariant($"over {100 * LargeNoiseFraction:0} % of the reference load: ")
+                    + "lower stop.rounds or adjacency_mw, or raise epsilon";
+            }
+
             if (derivation.Allowance.EpsilonPerCycle > 10)
             {
                 yield return $"ε {derivation.Allowance.EpsilonPerCycle:0.###} a cycle at {Names(sites)} promises next to nothing: "
